@@ -1,0 +1,3 @@
+//! The `thalweg` command.
+
+fn main() {}
