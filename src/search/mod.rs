@@ -1,0 +1,25 @@
+//! The hunt: heuristics propose points, rounds make the work replayable, the ledger keeps what was met.
+//!
+//! Enters: a landscape, its compiled kernel, settings. Leaves: an [`Outcome`]. Promised: the same landscape, settings
+//! and seed give the same ledger, bit for bit, on any number of threads; round r is drawn up from the state after round
+//! r - 2 and merged in task order. Deliberately absent: clocks, files and signals (an [`Observer`] says when to stop),
+//! and any move that knows a particular problem.
+//!
+//! The way of a task: [`state::Hunt`] draws a round of [`task::Task`]s; a [`worker::Worker`] turns each proposal into a
+//! start, lets `descent` ask and `evaluate` answer, many tasks in lanes at once; the hunt merges the results into the
+//! ledger and tells the heuristic that proposed.
+
+pub mod chain;
+pub mod crew;
+pub mod moves;
+pub mod outcome;
+pub mod schedule;
+pub mod settings;
+pub mod start;
+pub mod state;
+pub mod structure;
+pub mod task;
+pub mod worker;
+
+pub use outcome::{Observer, Outcome, RoundReport, Troubles, Verdict};
+pub use settings::{Heuristic, Mix, Settings};

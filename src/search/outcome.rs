@@ -1,0 +1,94 @@
+//! What a hunt tells while it goes on, and what it leaves.
+
+use crate::ledger::Ledger;
+
+use super::settings::Heuristic;
+
+/// Watches a hunt, and may end it after any round.
+pub trait Observer {
+    /// Called after each merged round, in order.
+    fn round(&mut self, report: &RoundReport<'_>) -> Verdict;
+
+    /// Called often from the waiting thread while a round is under way; [`Verdict::Stop`] ends the hunt with the last
+    /// whole round, and drops what is in flight.
+    fn idle(&mut self) -> Verdict {
+        Verdict::Continue
+    }
+}
+
+/// Whether a hunt goes on.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Verdict {
+    /// Go on.
+    Continue,
+    /// End with this round.
+    Stop,
+}
+
+/// The state of a hunt after a round.
+pub struct RoundReport<'a> {
+    /// The round's number, from 0.
+    pub round: u64,
+    /// Evaluations so far.
+    pub evaluations: u64,
+    /// Evaluations so far by heuristic, in the order of [`Heuristic::ALL`].
+    pub by_heuristic: [u64; Heuristic::ALL.len()],
+    /// Evaluations so far spent on confirming minima.
+    pub confirming: u64,
+    /// What was met so far.
+    pub ledger: &'a Ledger,
+    /// What went wrong so far.
+    pub troubles: &'a Troubles,
+}
+
+/// Things that went wrong, counted.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct Troubles {
+    /// Evaluations at points outside the landscape (the value was not finite).
+    pub outside: u64,
+    /// The first such point.
+    pub first_outside: Option<Vec<f64>>,
+    /// Starts that lay outside the landscape.
+    pub starts_outside: u64,
+    /// Descents that ran out of their evaluations.
+    pub out_of_budget: u64,
+    /// Descents that stalled before the gradient vanished.
+    pub stalled: u64,
+    /// Converged points whose polish failed.
+    pub not_confirmed: u64,
+    /// Converged points that proved to be saddles, from which the descent went on.
+    pub saddles: u64,
+    /// Converged points in flat valleys (a zero stiffness beyond the declared motions).
+    pub flat: u64,
+}
+
+/// Why a hunt ended.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Ending {
+    /// The evaluations were spent.
+    Evaluations,
+    /// The target was met.
+    Target,
+    /// The observer said so.
+    Observer,
+}
+
+/// What a hunt leaves.
+pub struct Outcome {
+    /// Every distinct minimum, confirmed where the closing allowed it.
+    pub ledger: Ledger,
+    /// Rounds merged.
+    pub rounds: u64,
+    /// Evaluations, the closing confirmations included.
+    pub evaluations: u64,
+    /// Evaluations by heuristic, in the order of [`Heuristic::ALL`].
+    pub by_heuristic: [u64; Heuristic::ALL.len()],
+    /// Evaluations spent on confirming minima.
+    pub confirming: u64,
+    /// Descents by heuristic.
+    pub descents: [u64; Heuristic::ALL.len()],
+    /// What went wrong.
+    pub troubles: Troubles,
+    /// Why it ended.
+    pub ending: Ending,
+}
