@@ -4,8 +4,23 @@
 //! Promised: in a landscape every index is in range, every shape agrees, every constant is finite, and loops are still
 //! rolled. Deliberately absent: derivatives and execution (see `kernel`); numerical tests of promises (see `evaluate`).
 
+mod build;
+mod calls;
+mod check;
+mod declare;
+mod domain;
+mod elaborate;
+mod evaluate;
+pub mod mistake;
+mod names;
+mod promise;
 pub mod symmetry;
 pub mod term;
+mod value;
+
+pub use check::{Checked, OverrideError, Overrides, check};
+pub use evaluate::TermEvaluator;
+pub use names::element_name;
 
 use symmetry::Symmetry;
 use term::{Index, TermId, Terms};

@@ -98,6 +98,19 @@ impl Index {
         }
     }
 
+    /// The levels in it, as bits.
+    pub fn levels(&self) -> u64 {
+        self.affine().factors.iter().fold(0, |levels, &(level, _)| levels | 1 << level)
+    }
+
+    /// The whole number that it is, if it is one.
+    pub fn constant(&self) -> Option<i64> {
+        match self {
+            Index::Affine(affine) if affine.factors.is_empty() => Some(affine.constant),
+            _ => None,
+        }
+    }
+
     /// The affine form that it is, or whose place it looks up.
     pub fn affine(&self) -> &Affine {
         match self {
@@ -136,6 +149,33 @@ impl IndexCondition {
             IndexCondition::Any(parts) => parts.iter().any(|part| part.holds(levels, lookups)),
             IndexCondition::Not(part) => !part.holds(levels, lookups),
         }
+    }
+}
+
+impl IndexCondition {
+    /// The levels in it, as bits.
+    pub fn levels(&self) -> u64 {
+        match self {
+            IndexCondition::Compare(_, left, right) => left.levels() | right.levels(),
+            IndexCondition::All(parts) | IndexCondition::Any(parts) => {
+                parts.iter().fold(0, |levels, part| levels | part.levels())
+            }
+            IndexCondition::Not(part) => part.levels(),
+        }
+    }
+}
+
+impl Term {
+    /// The terms that it is made of.
+    pub fn parts(&self) -> impl Iterator<Item = TermId> {
+        let parts: [Option<TermId>; 4] = match *self {
+            Term::Constant(_) | Term::Counter(_) | Term::Table(..) | Term::Unknown(_) | Term::Family(..) => [None; 4],
+            Term::Unary(_, of) | Term::Power(of, _) | Term::Reduce { body: of, .. } => [Some(of), None, None, None],
+            Term::Binary(_, left, right) => [Some(left), Some(right), None, None],
+            Term::Choose { then, otherwise, .. } => [Some(then), Some(otherwise), None, None],
+            Term::Select { left, right, then, otherwise, .. } => [Some(left), Some(right), Some(then), Some(otherwise)],
+        };
+        parts.into_iter().flatten()
     }
 }
 
@@ -201,10 +241,20 @@ pub enum Term {
     },
 }
 
+/// What a term depends on.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub struct TermInfo {
+    /// Whether it depends on unknowns.
+    pub unknowns: bool,
+    /// The levels that it depends on and does not bind itself, as bits.
+    pub levels: u64,
+}
+
 /// The store of terms, each once.
 #[derive(Clone, Debug, Default)]
 pub struct Terms {
     terms: Vec<Term>,
+    infos: Vec<TermInfo>,
     numbers: HashMap<Term, TermId>,
 }
 
@@ -215,6 +265,7 @@ impl Terms {
             return id;
         }
         let id = TermId(self.terms.len() as u32);
+        self.infos.push(self.examine(&term));
         self.terms.push(term.clone());
         self.numbers.insert(term, id);
         id
@@ -228,6 +279,38 @@ impl Terms {
     /// The term of a number.
     pub fn get(&self, id: TermId) -> &Term {
         &self.terms[id.0 as usize]
+    }
+
+    /// What a term depends on.
+    pub fn info(&self, id: TermId) -> TermInfo {
+        self.infos[id.0 as usize]
+    }
+
+    fn examine(&self, term: &Term) -> TermInfo {
+        let mut info = TermInfo::default();
+        match term {
+            Term::Constant(_) => {}
+            Term::Counter(index) | Term::Table(_, index) => info.levels = index.levels(),
+            Term::Unknown(index) | Term::Family(_, index) => {
+                info = TermInfo { unknowns: true, levels: index.levels() };
+            }
+            _ => {}
+        }
+        for part in term.parts() {
+            let part = self.info(part);
+            info.unknowns |= part.unknowns;
+            info.levels |= part.levels;
+        }
+        match term {
+            Term::Reduce { level, first, last, condition, .. } => {
+                info.levels |= condition.as_ref().map_or(0, IndexCondition::levels);
+                info.levels &= !(1 << level);
+                info.levels |= first.levels() | last.levels();
+            }
+            Term::Choose { condition, .. } => info.levels |= condition.levels(),
+            _ => {}
+        }
+        info
     }
 
     /// How many there are.

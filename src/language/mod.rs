@@ -5,4 +5,15 @@
 //! text. Deliberately absent: names, shapes and values (see `landscape`), and any look at the disk.
 
 pub mod diagnostic;
+mod lexer;
+pub mod mistake;
+mod parse;
+mod parser;
+mod render;
+mod suggest;
+mod token;
 pub mod tree;
+
+pub use parse::{Parsed, decode, parse};
+pub use render::render;
+pub use suggest::suggest;

@@ -4,4 +4,6 @@
 //! multiply-add), and the accuracy that each function's docs state. Deliberately absent: anything that knows a term or
 //! a program.
 
+pub mod algebra;
+pub mod functions;
 pub mod operation;

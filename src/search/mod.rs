@@ -11,6 +11,7 @@
 
 pub mod chain;
 pub mod crew;
+mod hunt;
 pub mod moves;
 pub mod outcome;
 pub mod schedule;
@@ -21,5 +22,6 @@ pub mod structure;
 pub mod task;
 pub mod worker;
 
-pub use outcome::{Observer, Outcome, RoundReport, Troubles, Verdict};
+pub use hunt::hunt;
+pub use outcome::{Ending, HuntError, Observer, Outcome, RoundReport, Troubles, Verdict};
 pub use settings::{Heuristic, Mix, Settings};

@@ -3,6 +3,7 @@
 use crate::ledger::Ledger;
 
 use super::settings::Heuristic;
+use super::task::Lost;
 
 /// Watches a hunt, and may end it after any round.
 pub trait Observer {
@@ -62,6 +63,17 @@ pub struct Troubles {
     pub flat: u64,
 }
 
+impl Troubles {
+    /// Counts a descent that found nothing.
+    pub fn count(&mut self, lost: Lost) {
+        match lost {
+            Lost::Outside => self.starts_outside += 1,
+            Lost::OutOfBudget => self.out_of_budget += 1,
+            Lost::Stalled => self.stalled += 1,
+        }
+    }
+}
+
 /// Why a hunt ended.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Ending {
@@ -92,3 +104,23 @@ pub struct Outcome {
     /// Why it ended.
     pub ending: Ending,
 }
+
+/// Why a hunt could not go on; neither is the fault of a problem.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub enum HuntError {
+    /// The system gave no threads.
+    Threads(String),
+    /// A worker failed: a fault of the program.
+    Worker,
+}
+
+impl std::fmt::Display for HuntError {
+    fn fmt(&self, out: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        match self {
+            HuntError::Threads(cause) => write!(out, "no threads could be started ({cause}); try fewer"),
+            HuntError::Worker => write!(out, "a worker thread failed; this is a fault of the program"),
+        }
+    }
+}
+
+impl std::error::Error for HuntError {}

@@ -2,7 +2,7 @@
 
 use std::sync::Arc;
 
-use crate::ledger::EntryId;
+use crate::ledger::{Candidate, Confirmed, EntryId};
 
 use super::moves::Move;
 use super::settings::Heuristic;
@@ -57,4 +57,69 @@ pub enum Proposal {
         /// Its size relative to the scale of the unknowns, for moves that have one.
         step: f64,
     },
+}
+
+/// What became of a task.
+#[derive(Clone, Debug)]
+pub struct TaskResult {
+    /// The task's round.
+    pub round: u64,
+    /// The task's place in the round.
+    pub number: u64,
+    /// Evaluations spent; a matrix of second derivatives counts as many as there are unknowns.
+    pub evaluations: u64,
+    /// Those of them that were outside the landscape.
+    pub outside: u64,
+    /// The first point outside.
+    pub first_outside: Option<Vec<f64>>,
+    /// What came of it.
+    pub finding: Finding,
+}
+
+/// What a task found.
+#[derive(Clone, Debug)]
+pub enum Finding {
+    /// A descent converged.
+    Met {
+        /// On whose account.
+        heuristic: Heuristic,
+        /// The heuristic's own mark.
+        mark: u64,
+        /// Where it ended.
+        candidate: Candidate,
+    },
+    /// A descent did not converge.
+    Lost {
+        /// On whose account.
+        heuristic: Heuristic,
+        /// The heuristic's own mark.
+        mark: u64,
+        /// Why.
+        reason: Lost,
+    },
+    /// A converged point passed the polish and the stiffness test, or the point that it led to did.
+    Confirmed {
+        /// The entry it was for.
+        entry: EntryId,
+        /// The polished minimum.
+        confirmed: Confirmed,
+        /// How many saddles were left on the way.
+        saddles: u64,
+    },
+    /// The point is no minimum, and led to none.
+    Dismissed {
+        /// The entry it was for.
+        entry: EntryId,
+    },
+}
+
+/// Why a descent found nothing.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Lost {
+    /// Its start lay outside the landscape.
+    Outside,
+    /// It ran out of its evaluations.
+    OutOfBudget,
+    /// No step went down, though the gradient had not vanished.
+    Stalled,
 }

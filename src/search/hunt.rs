@@ -1,0 +1,153 @@
+//! One whole search: rounds drawn, worked on by a crew, merged, until something says stop.
+
+use std::sync::Arc;
+
+use rayon::ThreadPoolBuilder;
+
+use crate::descent::Region;
+use crate::kernel::Kernel;
+use crate::landscape::Landscape;
+use crate::ledger::Identity;
+
+use super::crew::{Gathered, Gathering, Queue};
+use super::outcome::{Ending, HuntError, Observer, Outcome, RoundReport, Verdict};
+use super::settings::Settings;
+use super::state::Hunt;
+use super::structure::Structure;
+use super::task::Task;
+use super::worker::Worker;
+
+/// The most entries that the closing of a hunt confirms, the lowest first.
+const MOST_CLOSED: usize = 2000;
+
+/// Rounds in flight at once.
+const IN_FLIGHT: u64 = 2;
+
+/// Hunts on a landscape until the settings or the observer say stop.
+///
+/// `threads` changes how long it takes and nothing else. The hunt ends after a whole round; then the lowest entries
+/// that were not confirmed yet are.
+///
+/// # Errors
+/// [`HuntError`] where threads cannot be started or a worker failed.
+pub fn hunt(
+    landscape: &Landscape,
+    kernel: &Arc<Kernel>,
+    settings: &Settings,
+    threads: usize,
+    observer: &mut dyn Observer,
+) -> Result<Outcome, HuntError> {
+    let structure = Arc::new(Structure::new(landscape));
+    let region = Arc::new(Region::new(&landscape.slots, &landscape.symmetries));
+    let identity = Arc::new(Identity::new(&landscape.slots, &landscape.symmetries));
+    let threads = threads.max(1);
+    let pool = ThreadPoolBuilder::new()
+        .num_threads(threads)
+        .thread_name(|number| format!("hunt-{number}"))
+        .build()
+        .map_err(|error| HuntError::Threads(error.to_string()))?;
+    let queue = Queue::new(threads);
+    let (sender, mut gathering) = Gathering::new();
+    let mut state = Hunt::new(settings.clone(), structure.clone(), identity.clone());
+    let mut ended = Err(HuntError::Worker);
+    pool.in_place_scope(|scope| {
+        for _ in 0..threads {
+            let sender = sender.clone();
+            let (queue, structure, region, identity) = (&queue, &structure, &region, &identity);
+            scope.spawn(move |_| {
+                let mut worker = Worker::new(kernel, structure, region, identity, settings.seed, landscape.kinked);
+                worker.work(queue, &sender);
+            });
+        }
+        drop(sender);
+        let mut crew = Crew { queue: &queue, gathering: &mut gathering };
+        ended = crew.run(&mut state, observer);
+        queue.close();
+    });
+    let ending = ended?;
+    Ok(Outcome {
+        rounds: state.rounds_merged(),
+        evaluations: state.evaluations(),
+        by_heuristic: state.schedule().spent(),
+        confirming: state.confirming(),
+        descents: state.schedule().descents(),
+        troubles: state.troubles().clone(),
+        ending,
+        ledger: state.into_ledger(),
+    })
+}
+
+struct Crew<'a> {
+    queue: &'a Queue,
+    gathering: &'a mut Gathering,
+}
+
+impl Crew<'_> {
+    fn run(&mut self, state: &mut Hunt, observer: &mut dyn Observer) -> Result<Ending, HuntError> {
+        for round in 0..IN_FLIGHT {
+            self.send(round, state.draw(round));
+        }
+        let mut round = 0;
+        let ending = loop {
+            let Some(results) = self.wait(round, observer)? else { break Ending::Observer };
+            if let Some(ending) = state.merge(results) {
+                observer.round(&report(round, state));
+                break ending;
+            }
+            if observer.round(&report(round, state)) == Verdict::Stop {
+                break Ending::Observer;
+            }
+            self.send(round + IN_FLIGHT, state.draw(round + IN_FLIGHT));
+            round += 1;
+        };
+        // What is in flight is dropped, not merged: a hunt that goes on later draws the same rounds again.
+        self.queue.clear();
+        self.close(state, observer)?;
+        Ok(ending)
+    }
+
+    /// Confirms the lowest entries that still wait.
+    fn close(&mut self, state: &mut Hunt, observer: &mut dyn Observer) -> Result<(), HuntError> {
+        // A round number that no round in flight has.
+        let round = state.rounds_merged() + 2 * IN_FLIGHT;
+        let tasks = state.draw_closing(round, MOST_CLOSED);
+        self.send(round, tasks);
+        let results = loop {
+            match self.gathering.wait(round) {
+                Gathered::Whole(results) => break results,
+                Gathered::Waiting => drop(observer.idle()),
+                Gathered::Lost => return Err(HuntError::Worker),
+            }
+        };
+        state.merge_closing(results);
+        Ok(())
+    }
+
+    fn send(&mut self, round: u64, tasks: Vec<Task>) {
+        self.gathering.expect(round, tasks.len());
+        self.queue.add(tasks);
+    }
+
+    /// The results of a round; `None` when the observer will not wait for them.
+    fn wait(&mut self, round: u64, observer: &mut dyn Observer) -> Result<Option<Vec<super::task::TaskResult>>, HuntError> {
+        loop {
+            match self.gathering.wait(round) {
+                Gathered::Whole(results) => return Ok(Some(results)),
+                Gathered::Waiting if observer.idle() == Verdict::Stop => return Ok(None),
+                Gathered::Waiting => {}
+                Gathered::Lost => return Err(HuntError::Worker),
+            }
+        }
+    }
+}
+
+fn report(round: u64, state: &Hunt) -> RoundReport<'_> {
+    RoundReport {
+        round,
+        evaluations: state.evaluations(),
+        by_heuristic: state.schedule().spent(),
+        confirming: state.confirming(),
+        ledger: state.ledger(),
+        troubles: state.troubles(),
+    }
+}
