@@ -11,6 +11,8 @@ mod declare;
 mod domain;
 mod elaborate;
 mod evaluate;
+#[cfg(test)]
+mod goldens;
 pub mod mistake;
 mod names;
 mod promise;
