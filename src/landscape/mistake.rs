@@ -271,6 +271,9 @@ impl Mistake {
             Mistake::SampledOpen => ("the region to start from must have finite ends".into(), None),
             Mistake::CyclicOpen => ("the two ends of a cyclic unknown must be finite".into(), None),
             Mistake::BadBound => ("a bound must be a number".into(), None),
+            Mistake::NotFinite { value } if value.is_nan() => {
+                ("this constant is not a number".into(), some("it lies where the operation has no value"))
+            }
             Mistake::NotFinite { value } => {
                 (format!("this constant is {value}"), some("only `inf` as a bound may be infinite"))
             }

@@ -18,6 +18,7 @@ mod names;
 mod promise;
 pub mod symmetry;
 pub mod term;
+mod text;
 mod value;
 
 pub use check::{Checked, OverrideError, Overrides, check};
