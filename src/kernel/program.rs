@@ -142,6 +142,24 @@ pub enum Instruction {
         /// The source.
         from: Register,
     },
+    /// `buffer[at] = buffer[at] - from`
+    Deduct {
+        /// The buffer.
+        buffer: BufferId,
+        /// The row.
+        at: Index,
+        /// The source.
+        from: Register,
+    },
+    /// `to = of^exponent`, a whole power. The simplify pass turns it into products.
+    Power {
+        /// The target.
+        to: Register,
+        /// The base.
+        of: Register,
+        /// The exponent.
+        exponent: i32,
+    },
     /// `to = from`
     Copy {
         /// The target.
@@ -195,4 +213,111 @@ pub enum Instruction {
         /// Where it does not.
         otherwise: Register,
     },
+}
+
+impl Instruction {
+    /// The register that it sets, if it sets one.
+    pub fn target(&self) -> Option<Register> {
+        use Instruction::*;
+        match *self {
+            Constant { to, .. }
+            | Number { to, .. }
+            | Table { to, .. }
+            | Load { to, .. }
+            | Copy { to, .. }
+            | Unary { to, .. }
+            | Power { to, .. }
+            | Binary { to, .. }
+            | MultiplyAdd { to, .. }
+            | Select { to, .. } => Some(to),
+            Store { .. } | Accumulate { .. } | Deduct { .. } => None,
+        }
+    }
+
+    /// The registers that it reads.
+    pub fn sources(&self) -> impl Iterator<Item = Register> + use<> {
+        use Instruction::*;
+        let sources: [Option<Register>; 4] = match *self {
+            Constant { .. } | Number { .. } | Table { .. } | Load { .. } => [None; 4],
+            Store { from, .. } | Accumulate { from, .. } | Deduct { from, .. } | Copy { from, .. } => {
+                [Some(from), None, None, None]
+            }
+            Unary { of, .. } | Power { of, .. } => [Some(of), None, None, None],
+            Binary { left, right, .. } => [Some(left), Some(right), None, None],
+            MultiplyAdd { left, right, plus, .. } => [Some(left), Some(right), Some(plus), None],
+            Select { left, right, then, otherwise, .. } => [Some(left), Some(right), Some(then), Some(otherwise)],
+        };
+        sources.into_iter().flatten()
+    }
+
+    /// The same with other registers: sources first, then the target.
+    pub fn renamed(
+        &self,
+        mut source: impl FnMut(Register) -> Register,
+        target: impl FnOnce(Register) -> Register,
+    ) -> Self {
+        use Instruction::*;
+        let mut instruction = self.clone();
+        match &mut instruction {
+            Constant { .. } | Number { .. } | Table { .. } | Load { .. } => {}
+            Store { from, .. } | Accumulate { from, .. } | Deduct { from, .. } | Copy { from, .. } => {
+                *from = source(*from)
+            }
+            Unary { of, .. } | Power { of, .. } => *of = source(*of),
+            Binary { left, right, .. } => (*left, *right) = (source(*left), source(*right)),
+            MultiplyAdd { left, right, plus, .. } => {
+                (*left, *right, *plus) = (source(*left), source(*right), source(*plus));
+            }
+            Select { left, right, then, otherwise, .. } => {
+                (*left, *right) = (source(*left), source(*right));
+                (*then, *otherwise) = (source(*then), source(*otherwise));
+            }
+        }
+        match &mut instruction {
+            Constant { to, .. }
+            | Number { to, .. }
+            | Table { to, .. }
+            | Load { to, .. }
+            | Copy { to, .. }
+            | Unary { to, .. }
+            | Power { to, .. }
+            | Binary { to, .. }
+            | MultiplyAdd { to, .. }
+            | Select { to, .. } => *to = target(*to),
+            Store { .. } | Accumulate { .. } | Deduct { .. } => {}
+        }
+        instruction
+    }
+}
+
+impl Program {
+    /// A new register.
+    pub fn fresh(&mut self) -> Register {
+        self.registers += 1;
+        Register(self.registers - 1)
+    }
+
+    /// A new buffer.
+    pub fn add_buffer(&mut self, role: Role, length: usize) -> BufferId {
+        self.buffers.push(Buffer { role, length });
+        BufferId(self.buffers.len() as u32 - 1)
+    }
+
+    /// The buffer with a role, if there is one; the first for `Scratch`.
+    pub fn buffer(&self, role: Role) -> Option<BufferId> {
+        self.buffers.iter().position(|buffer| buffer.role == role).map(|place| BufferId(place as u32))
+    }
+
+    /// The number of instructions, each counted once however often it runs.
+    pub fn n_instructions(&self) -> usize {
+        fn count(steps: &[Step]) -> usize {
+            let of = |step: &Step| match step {
+                Step::Do(_) => 1,
+                Step::Loop { body, .. } => count(body),
+                Step::When { then, otherwise, .. } => count(then) + count(otherwise),
+            };
+            steps.iter().map(of).sum()
+        }
+        count(&self.body)
+    }
 }

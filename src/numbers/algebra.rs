@@ -64,6 +64,10 @@ impl Number for Dual {
 
     fn binary(operation: Binary, x: &Self, y: &Self) -> Self {
         let value = functions::binary(operation, x.value, y.value);
+        if operation == Binary::Gate {
+            // What the gate hides it hides in the derivative too.
+            return Dual { value, slope: functions::gate(x.slope, y.value) + functions::gate(x.value, y.slope) };
+        }
         let (by_x, by_y) = binary_slopes(operation, x.value, y.value, value);
         Dual { value, slope: functions::gate(x.slope, by_x) + functions::gate(y.slope, by_y) }
     }
@@ -126,7 +130,6 @@ pub fn binary_slopes(operation: Binary, x: f64, y: f64, value: f64) -> (f64, f64
             (y / square, -(x / square))
         }
         Binary::Hypotenuse => (x / value, y / value),
-        // As if a plain product: the gate only hides what is not a number.
         Binary::Gate => (y, x),
     }
 }

@@ -3,5 +3,5 @@
 /// What the others share: problems from text, hunts, published tables.
 mod support;
 
-/// The main job against published values.
-mod published;
+/// The compiled kernel against independent ways to the same numbers.
+mod kernel;

@@ -60,10 +60,7 @@ const COSINE: [f64; 8] = [
 
 /// `x` less a multiple of `pi/2`, as a sum of two floats, and the multiple modulo 4 (Cody and Waite 1980).
 #[inline(always)]
-fn reduce(x: f64) -> (f64, f64, u64) {
-    if x.abs() > LARGE {
-        return reduce_large(x);
-    }
+fn reduce_moderate(x: f64) -> (f64, f64, u64) {
     let shifted = x * std::f64::consts::FRAC_2_PI + ROUNDER;
     let turns = shifted - ROUNDER;
     let first = x - turns * HALF_PI[0];
@@ -71,6 +68,17 @@ fn reduce(x: f64) -> (f64, f64, u64) {
     let (third, f) = two_sum(second, -(turns * HALF_PI[2]));
     let (high, low) = two_sum(third, (e + f) - turns * HALF_PI[3]);
     (high, low, shifted.to_bits() & 3)
+}
+
+/// Whether an angle is reduced on the straight line; huge ones, infinities and NaN are not.
+#[inline(always)]
+pub fn is_moderate_angle(x: f64) -> bool {
+    x.abs() <= LARGE
+}
+
+#[inline(always)]
+fn reduce(x: f64) -> (f64, f64, u64) {
+    if is_moderate_angle(x) { reduce_moderate(x) } else { reduce_large(x) }
 }
 
 /// The same for huge angles: the product with 192 digits of `2/pi`, of which the whole turns fall away (Payne and Hanek
@@ -150,35 +158,66 @@ fn cosine_near(high: f64, low: f64) -> f64 {
     leading + (((1.0 - leading) - half) + (z * z * polynomial(COSINE, z) - high * low))
 }
 
-/// Both at once, and the quadrant.
+/// Sine and cosine of a reduced angle, and its quadrant.
+type Both = (f64, f64, u64);
+
 #[inline(always)]
-fn both(x: f64) -> (f64, f64, u64) {
-    let (high, low, quadrant) = reduce(x);
+fn both((high, low, quadrant): (f64, f64, u64)) -> Both {
     (sine_near(high, low), cosine_near(high, low), quadrant)
 }
 
-/// The sine, within 1 ulp at every finite angle; NaN at infinity.
 #[inline(always)]
-pub fn sine(x: f64) -> f64 {
-    let (s, c, quadrant) = both(x);
+fn sine_of(x: f64, (s, c, quadrant): Both) -> f64 {
     let value = if quadrant & 1 == 0 { s } else { c };
     let value = f64::from_bits(value.to_bits() ^ (quadrant & 2) << 62);
     // Keeps the sign of zero.
     if x == 0.0 { x } else { value }
 }
 
+#[inline(always)]
+fn cosine_of((s, c, quadrant): Both) -> f64 {
+    let value = if quadrant & 1 == 0 { c } else { s };
+    f64::from_bits(value.to_bits() ^ ((quadrant + 1) & 2) << 62)
+}
+
+#[inline(always)]
+fn tangent_of(x: f64, (s, c, quadrant): Both) -> f64 {
+    let (top, bottom) = if quadrant & 1 == 0 { (s, c) } else { (-c, s) };
+    if x == 0.0 { x } else { top / bottom }
+}
+
+/// The sine, within 1 ulp at every finite angle; NaN at infinity.
+#[inline(always)]
+pub fn sine(x: f64) -> f64 {
+    sine_of(x, both(reduce(x)))
+}
+
 /// The cosine, within 1 ulp at every finite angle; NaN at infinity.
 #[inline(always)]
 pub fn cosine(x: f64) -> f64 {
-    let (s, c, quadrant) = both(x);
-    let value = if quadrant & 1 == 0 { c } else { s };
-    f64::from_bits(value.to_bits() ^ (quadrant + 1 & 2) << 62)
+    cosine_of(both(reduce(x)))
 }
 
 /// The tangent, within 3 ulp.
 #[inline(always)]
 pub fn tangent(x: f64) -> f64 {
-    let (s, c, quadrant) = both(x);
-    let (top, bottom) = if quadrant & 1 == 0 { (s, c) } else { (-c, s) };
-    if x == 0.0 { x } else { top / bottom }
+    tangent_of(x, both(reduce(x)))
+}
+
+/// The sine of a moderate angle, on a straight line.
+#[inline(always)]
+pub fn moderate_sine(x: f64) -> f64 {
+    sine_of(x, both(reduce_moderate(x)))
+}
+
+/// The cosine of a moderate angle, on a straight line.
+#[inline(always)]
+pub fn moderate_cosine(x: f64) -> f64 {
+    cosine_of(both(reduce_moderate(x)))
+}
+
+/// The tangent of a moderate angle, on a straight line.
+#[inline(always)]
+pub fn moderate_tangent(x: f64) -> f64 {
+    tangent_of(x, both(reduce_moderate(x)))
 }

@@ -20,7 +20,7 @@ mod power;
 
 use super::operation::{Binary, Unary};
 
-pub use angle::{cosine, sine, tangent};
+pub use angle::{cosine, is_moderate_angle, moderate_cosine, moderate_sine, moderate_tangent, sine, tangent};
 pub use arc::{arc_cosine, arc_sine, arc_tangent, arc_tangent_2};
 pub use error_function::error_function;
 pub use exponential::exponential;
