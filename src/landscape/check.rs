@@ -259,6 +259,13 @@ impl<'a> Checker<'a> {
                 _ => {}
             }
         }
+        for (_, name) in &names {
+            let uncalled = self.definitions.get(name).filter(|definition| !definition.used);
+            if let Some(Progress::Done(Ok(Symbol::Function(function)))) = uncalled.map(|uncalled| &uncalled.progress) {
+                let function = Rc::clone(function);
+                self.demand_names(&function);
+            }
+        }
         let end = file.statements.last().map_or(Span::default(), |statement| statement.span);
         let end = Span { start: end.end, end: end.end };
         if self.unknowns.is_empty()
@@ -336,8 +343,7 @@ impl<'a> Checker<'a> {
             return Ok(Symbol::Value(Value::Number(self.build.constant(constant)?)));
         }
         let Some(definition) = self.definitions.get_mut(name) else {
-            let mut candidates: Vec<String> = self.definitions.keys().cloned().collect();
-            candidates.sort();
+            let candidates = self.defined_names();
             let locals = self.locals.iter().map(|local| local.0.as_str());
             let meant = suggest(name, locals.chain(candidates.iter().map(String::as_str)).chain(["pi", "inf"]));
             if is_function(name) {
@@ -386,6 +392,12 @@ impl<'a> Checker<'a> {
 
     pub(super) fn is_defined(&self, name: &str) -> bool {
         self.definitions.contains_key(name) || self.locals.iter().any(|local| local.0 == name)
+    }
+
+    pub(super) fn defined_names(&self) -> Vec<String> {
+        let mut names: Vec<String> = self.definitions.keys().cloned().collect();
+        names.sort();
+        names
     }
 
     pub(super) fn function_names(&self) -> Vec<String> {

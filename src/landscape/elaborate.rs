@@ -20,7 +20,7 @@ const MAX_UNROLLED: i64 = 4;
 const MAX_LISTED: usize = 8;
 
 /// Formulas may nest this deep, functions and definitions that they lean on included.
-const MAX_DEPTH: usize = 400;
+pub(super) const MAX_DEPTH: usize = 400;
 
 /// All formulas of a file, functions written out, may have this many parts.
 const MAX_STEPS: u64 = 2_000_000;

@@ -19,6 +19,7 @@ mod promise;
 pub mod symmetry;
 pub mod term;
 mod text;
+mod uncalled;
 mod value;
 
 pub use check::{Checked, OverrideError, Overrides, check};
