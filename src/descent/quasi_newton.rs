@@ -149,6 +149,11 @@ impl Descent {
         &self.trial
     }
 
+    /// Whether it has ended.
+    pub fn has_ended(&self) -> bool {
+        self.kind.is_some()
+    }
+
     /// Evaluations so far.
     pub fn evaluations(&self) -> u64 {
         self.evaluations

@@ -70,6 +70,12 @@ impl Queue {
         self.clearings.load(Ordering::Relaxed)
     }
 
+    /// Whether no task waits and none will come.
+    pub fn is_done(&self) -> bool {
+        let waiting = self.lock();
+        waiting.closed && waiting.tasks.is_empty()
+    }
+
     fn lock(&self) -> MutexGuard<'_, Waiting> {
         // A worker that panicked holds no half-made state: the queue is changed in single steps.
         self.waiting.lock().unwrap_or_else(PoisonError::into_inner)

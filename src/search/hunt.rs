@@ -14,8 +14,8 @@ use super::outcome::{Ending, HuntError, Observer, Outcome, RoundReport, Verdict}
 use super::settings::Settings;
 use super::state::Hunt;
 use super::structure::Structure;
-use super::task::Task;
-use super::worker::Worker;
+use super::task::{Task, TaskResult};
+use super::worker::{Worker, Workshop};
 
 /// The most entries that the closing of a hunt confirms, the lowest first.
 const MOST_CLOSED: usize = 2000;
@@ -37,9 +37,14 @@ pub fn hunt(
     threads: usize,
     observer: &mut dyn Observer,
 ) -> Result<Outcome, HuntError> {
-    let structure = Arc::new(Structure::new(landscape));
-    let region = Arc::new(Region::new(&landscape.slots, &landscape.symmetries));
-    let identity = Arc::new(Identity::new(&landscape.slots, &landscape.symmetries));
+    let shop = Workshop {
+        kernel: kernel.clone(),
+        structure: Arc::new(Structure::new(landscape)),
+        region: Arc::new(Region::new(&landscape.slots, &landscape.symmetries)),
+        identity: Arc::new(Identity::new(&landscape.slots, &landscape.symmetries)),
+        seed: settings.seed,
+        kinked: landscape.kinked,
+    };
     let threads = threads.max(1);
     let pool = ThreadPoolBuilder::new()
         .num_threads(threads)
@@ -48,16 +53,13 @@ pub fn hunt(
         .map_err(|error| HuntError::Threads(error.to_string()))?;
     let queue = Queue::new(threads);
     let (sender, mut gathering) = Gathering::new();
-    let mut state = Hunt::new(settings.clone(), structure.clone(), identity.clone());
+    let mut state = Hunt::new(settings.clone(), shop.structure.clone(), shop.identity.clone());
     let mut ended = Err(HuntError::Worker);
     pool.in_place_scope(|scope| {
         for _ in 0..threads {
             let sender = sender.clone();
-            let (queue, structure, region, identity) = (&queue, &structure, &region, &identity);
-            scope.spawn(move |_| {
-                let mut worker = Worker::new(kernel, structure, region, identity, settings.seed, landscape.kinked);
-                worker.work(queue, &sender);
-            });
+            let (queue, shop) = (&queue, &shop);
+            scope.spawn(move |_| Worker::new(shop).work(queue, &sender));
         }
         drop(sender);
         let mut crew = Crew { queue: &queue, gathering: &mut gathering };
@@ -102,12 +104,12 @@ impl Crew<'_> {
         };
         // What is in flight is dropped, not merged: a hunt that goes on later draws the same rounds again.
         self.queue.clear();
-        self.close(state, observer)?;
+        self.close(state)?;
         Ok(ending)
     }
 
     /// Confirms the lowest entries that still wait.
-    fn close(&mut self, state: &mut Hunt, observer: &mut dyn Observer) -> Result<(), HuntError> {
+    fn close(&mut self, state: &mut Hunt) -> Result<(), HuntError> {
         // A round number that no round in flight has.
         let round = state.rounds_merged() + 2 * IN_FLIGHT;
         let tasks = state.draw_closing(round, MOST_CLOSED);
@@ -115,7 +117,8 @@ impl Crew<'_> {
         let results = loop {
             match self.gathering.wait(round) {
                 Gathered::Whole(results) => break results,
-                Gathered::Waiting => drop(observer.idle()),
+                // Being asked to stop again changes nothing: the closing is short.
+                Gathered::Waiting => {}
                 Gathered::Lost => return Err(HuntError::Worker),
             }
         };
@@ -129,7 +132,7 @@ impl Crew<'_> {
     }
 
     /// The results of a round; `None` when the observer will not wait for them.
-    fn wait(&mut self, round: u64, observer: &mut dyn Observer) -> Result<Option<Vec<super::task::TaskResult>>, HuntError> {
+    fn wait(&mut self, round: u64, observer: &mut dyn Observer) -> Result<Option<Vec<TaskResult>>, HuntError> {
         loop {
             match self.gathering.wait(round) {
                 Gathered::Whole(results) => return Ok(Some(results)),

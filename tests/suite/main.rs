@@ -5,3 +5,6 @@ mod support;
 
 /// The compiled kernel against independent ways to the same numbers.
 mod kernel;
+
+/// Descents and confirmations on compiled landscapes.
+mod descents;

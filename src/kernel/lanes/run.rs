@@ -117,6 +117,7 @@ unsafe fn run_here(run: Run<'_>) {
     }
 }
 
+#[allow(clippy::undocumented_unsafe_blocks, reason = "one argument, above the match, serves all its arms")]
 /// Interprets the code with rows of `K` lanes, `C` at a time.
 ///
 /// # Safety

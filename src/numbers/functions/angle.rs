@@ -138,7 +138,7 @@ fn reduce_large(x: f64) -> (f64, f64, u64) {
     let rest = error + (low * std::f64::consts::FRAC_PI_2 + high * 6.123233995736766e-17);
     let (high, low) = super::pair::fast_two_sum(product, rest);
     let flip = if negative != (x < 0.0) { -1.0 } else { 1.0 };
-    let quadrant = if x < 0.0 { 4 - quadrant & 3 } else { quadrant };
+    let quadrant = if x < 0.0 { (4 - quadrant) & 3 } else { quadrant };
     (flip * high, flip * low, quadrant)
 }
 

@@ -106,7 +106,7 @@ pub fn is_power_of_two(x: f64) -> bool {
 
 /// A polynomial by Horner's rule, constant first.
 #[inline(always)]
-pub(self) fn polynomial<const N: usize>(coefficients: [f64; N], x: f64) -> f64 {
+fn polynomial<const N: usize>(coefficients: [f64; N], x: f64) -> f64 {
     let mut sum = coefficients[N - 1];
     let mut place = N - 1;
     while place > 0 {

@@ -1,7 +1,7 @@
 //! Moves for clouds of points.
 
 use rand::{Rng, RngExt};
-use rand_distr::{Distribution, StandardNormal};
+use rand_distr::{Distribution, UnitCircle, UnitSphere};
 
 use crate::base::order::Total;
 use crate::search::structure::{Cloud, Structure};
@@ -96,15 +96,13 @@ fn usual_contact(points: &[[f64; 3]]) -> f64 {
     nearest[nearest.len() / 2].0
 }
 
+/// By rejection (Marsaglia 1972): products and a square root only, so the bits are the same everywhere.
 fn random_direction(dimensions: usize, rng: &mut impl Rng) -> [f64; 3] {
-    loop {
-        let mut direction = [0.0; 3];
-        direction.iter_mut().take(dimensions).for_each(|x| *x = StandardNormal.sample(rng));
-        let length = distance(&direction, &[0.0; 3]);
-        if length > 1e-3 {
-            return direction.map(|x| x / length);
-        }
+    if dimensions == 2 {
+        let [x, y]: [f64; 2] = UnitCircle.sample(rng);
+        return [x, y, 0.0];
     }
+    UnitSphere.sample(rng)
 }
 
 /// The outermost place on the ray from the centroid at which the nearest other row is exactly `contact` away: there

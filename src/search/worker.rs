@@ -1,0 +1,311 @@
+//! One thread at work: many tasks in lanes at once.
+
+use std::sync::Arc;
+use std::sync::mpsc::Sender;
+
+use crate::base::random::{Purpose, stream};
+use crate::descent::{Ask, Confirmation, Descent, EndKind, Judgement, Progress, Region};
+use crate::evaluate::Evaluator;
+use crate::kernel::Kernel;
+use crate::ledger::{Candidate, Confirmed, Identity, Kind};
+
+use super::crew::Queue;
+use super::settings::Heuristic;
+use super::start;
+use super::structure::Structure;
+use super::task::{Finding, Lost, Proposal, Task, TaskResult, Work};
+
+/// Tasks that a worker has in hand at once.
+const LANES: usize = 16;
+
+/// Times that a cloud at its bounds is brought back to the middle within one descent.
+const MOST_RECENTRINGS: u32 = 3;
+
+/// Saddles that one confirmation may leave.
+const MOST_SADDLES: u64 = 8;
+
+/// What all workers of a hunt share.
+pub struct Workshop {
+    /// The compiled landscape.
+    pub kernel: Arc<Kernel>,
+    /// What moves know.
+    pub structure: Arc<Structure>,
+    /// What descents know.
+    pub region: Arc<Region>,
+    /// What makes two points the same.
+    pub identity: Arc<Identity>,
+    /// The seed of the hunt.
+    pub seed: u64,
+    /// Whether the landscape has kinks, where a descent may end without a vanishing gradient.
+    pub kinked: bool,
+}
+
+impl Workshop {
+    /// Evaluations of one descent at most.
+    fn most_evaluations(&self) -> u64 {
+        3000 + 100 * self.structure.n_unknowns() as u64
+    }
+}
+
+/// A worker.
+pub struct Worker<'a> {
+    shop: &'a Workshop,
+    evaluator: Evaluator,
+    benches: Vec<Bench>,
+    gradient: Vec<f64>,
+}
+
+/// A place for one task.
+struct Bench {
+    descent: Descent,
+    job: Option<Job>,
+}
+
+/// A task in hand.
+struct Job {
+    task: Task,
+    /// How often the queue had been cleared when the task was taken.
+    clearings: u64,
+    evaluations: u64,
+    outside: u64,
+    first_outside: Option<Vec<f64>>,
+    recentrings: u32,
+    saddles: u64,
+    /// The confirmation under way; `None` while the descent is.
+    confirmation: Option<Confirmation>,
+}
+
+impl<'a> Worker<'a> {
+    /// A worker in a workshop.
+    pub fn new(shop: &'a Workshop) -> Self {
+        let benches = (0..LANES)
+            .map(|_| Bench { descent: Descent::new(&shop.region, shop.most_evaluations()), job: None })
+            .collect();
+        let gradient = vec![0.0; shop.structure.n_unknowns()];
+        Worker { shop, evaluator: Evaluator::new(&shop.kernel), benches, gradient }
+    }
+
+    /// Works until the queue is closed and empty, or nobody listens.
+    pub fn work(&mut self, queue: &Queue, results: &Sender<TaskResult>) {
+        let mut taken = Vec::new();
+        loop {
+            let n_idle = self.benches.iter().filter(|bench| bench.job.is_none()).count();
+            if n_idle > 0 {
+                let clearings = queue.take(n_idle, n_idle == LANES, &mut taken);
+                for task in taken.drain(..) {
+                    self.begin(task, clearings);
+                }
+            }
+            let clearings = queue.clearings();
+            for bench in &mut self.benches {
+                bench.job.take_if(|job| job.clearings < clearings);
+            }
+            if self.benches.iter().all(|bench| bench.job.is_none()) {
+                if queue.is_done() {
+                    return;
+                }
+                continue;
+            }
+            self.advance();
+            for place in 0..self.benches.len() {
+                if let Some(result) = self.harvest(place)
+                    && results.send(result).is_err()
+                {
+                    return;
+                }
+            }
+        }
+    }
+
+    fn begin(&mut self, task: Task, clearings: u64) {
+        let Some(bench) = self.benches.iter_mut().find(|bench| bench.job.is_none()) else { return };
+        let shop = self.shop;
+        let confirmation = match &task.work {
+            Work::Confirm { at, .. } => Some(Confirmation::new(&shop.region, at)),
+            Work::Descend { heuristic, proposal, .. } => {
+                let start = make_start(shop, &task, *heuristic, proposal);
+                bench.descent.start(&start);
+                None
+            }
+        };
+        bench.job = Some(Job {
+            task,
+            clearings,
+            evaluations: 0,
+            outside: 0,
+            first_outside: None,
+            recentrings: 0,
+            saddles: 0,
+            confirmation,
+        });
+    }
+
+    /// One evaluation, or one matrix, for every task in hand.
+    fn advance(&mut self) {
+        let shop = self.shop;
+        let mut asked: Vec<usize> = Vec::with_capacity(LANES);
+        for (place, bench) in self.benches.iter_mut().enumerate() {
+            let Some(job) = &mut bench.job else { continue };
+            let Some(confirmation) = &mut job.confirmation else {
+                asked.push(place);
+                continue;
+            };
+            if confirmation.judgement().is_some() {
+                continue;
+            }
+            match confirmation.ask() {
+                Ask::Gradient(_) => asked.push(place),
+                Ask::Curvature(at) => {
+                    let matrix = self.evaluator.curvature(at);
+                    // A matrix takes one pass for each unknown.
+                    job.evaluations += at.len() as u64;
+                    confirmation.tell_curvature(&matrix);
+                }
+            }
+        }
+        if asked.is_empty() {
+            return;
+        }
+        let benches = &self.benches;
+        let point = |k: usize| {
+            let bench: &Bench = &benches[asked[k]];
+            match bench.job.as_ref().and_then(|job| job.confirmation.as_ref()).map(Confirmation::ask) {
+                Some(Ask::Gradient(at)) => at,
+                _ => bench.descent.ask(),
+            }
+        };
+        self.evaluator.evaluate(asked.len(), point);
+        for (k, &place) in asked.iter().enumerate() {
+            let value = self.evaluator.value(k);
+            self.evaluator.read_gradient(k, &mut self.gradient);
+            let bench = &mut self.benches[place];
+            let Some(job) = &mut bench.job else { continue };
+            job.evaluations += 1;
+            if !value.is_finite() {
+                job.outside += 1;
+                if job.first_outside.is_none() {
+                    job.first_outside = Some(bench.descent.ask().to_vec());
+                }
+            }
+            match &mut job.confirmation {
+                Some(confirmation) => confirmation.tell_gradient(value, &self.gradient),
+                None => {
+                    if bench.descent.tell(value, &self.gradient) == Progress::Ended {
+                        job.descent_ended(&mut bench.descent, shop);
+                    }
+                }
+            }
+        }
+    }
+
+    /// The result of a bench whose task has ended.
+    fn harvest(&mut self, place: usize) -> Option<TaskResult> {
+        let shop = self.shop;
+        let bench = &mut self.benches[place];
+        let job = bench.job.as_mut()?;
+        let finding = match (&job.task.work, &job.confirmation) {
+            (Work::Descend { heuristic, mark, .. }, _) => {
+                if !bench.descent.has_ended() {
+                    return None;
+                }
+                let (heuristic, mark) = (*heuristic, *mark);
+                let end = bench.descent.end();
+                let met = |kinked| {
+                    let candidate = Candidate::new(&shop.identity, end.value, end.at.clone().into(), kinked);
+                    Finding::Met { heuristic, mark, candidate }
+                };
+                match end.kind {
+                    EndKind::Converged => met(false),
+                    EndKind::Stalled if shop.kinked => met(true),
+                    EndKind::Stalled => Finding::Lost { heuristic, mark, reason: Lost::Stalled },
+                    EndKind::Outside => Finding::Lost { heuristic, mark, reason: Lost::Outside },
+                    EndKind::OutOfBudget => Finding::Lost { heuristic, mark, reason: Lost::OutOfBudget },
+                }
+            }
+            (Work::Confirm { .. }, None) => {
+                // The descent away from a saddle is under way.
+                if !bench.descent.has_ended() {
+                    return None;
+                }
+                let end = bench.descent.end();
+                if end.kind == EndKind::Converged && job.saddles <= MOST_SADDLES {
+                    job.confirmation = Some(Confirmation::new(&shop.region, &end.at));
+                    return None;
+                }
+                Finding::Dismissed { entry: job.entry()? }
+            }
+            (Work::Confirm { entry, .. }, Some(confirmation)) => match confirmation.judgement()? {
+                Judgement::Failed => Finding::Dismissed { entry: *entry },
+                Judgement::Saddle { escape } => {
+                    job.saddles += 1;
+                    bench.descent.start(escape);
+                    job.confirmation = None;
+                    return None;
+                }
+                Judgement::Minimum { value, at, stiffness, residual, active, flat } => {
+                    let kind = match (flat, active.is_empty()) {
+                        (true, _) => Kind::Flat,
+                        (false, true) => Kind::Interior,
+                        (false, false) => Kind::Bound,
+                    };
+                    let confirmed = Confirmed {
+                        kind,
+                        value: *value,
+                        at: at.clone().into(),
+                        stiffness: stiffness.clone(),
+                        residual: *residual,
+                        active: active.clone(),
+                    };
+                    Finding::Confirmed { entry: *entry, confirmed, saddles: job.saddles }
+                }
+            },
+        };
+        let job = bench.job.take()?;
+        Some(TaskResult {
+            round: job.task.round,
+            number: job.task.number,
+            evaluations: job.evaluations,
+            outside: job.outside,
+            first_outside: job.first_outside,
+            finding,
+        })
+    }
+}
+
+impl Job {
+    fn entry(&self) -> Option<crate::ledger::EntryId> {
+        match self.task.work {
+            Work::Confirm { entry, .. } => Some(entry),
+            Work::Descend { .. } => None,
+        }
+    }
+
+    /// A cloud that drifted against its box is put back into the middle, and goes on.
+    fn descent_ended(&mut self, descent: &mut Descent, shop: &Workshop) {
+        let end = descent.end();
+        if end.kind != EndKind::Converged || self.recentrings >= MOST_RECENTRINGS {
+            return;
+        }
+        if let Some(moved) = shop.region.recentre(&end.at) {
+            self.recentrings += 1;
+            descent.start(&moved);
+        }
+    }
+}
+
+/// The start of a task, from its own random stream.
+fn make_start(shop: &Workshop, task: &Task, heuristic: Heuristic, proposal: &Proposal) -> Vec<f64> {
+    let purpose = if heuristic == Heuristic::Survey { Purpose::Survey } else { Purpose::Task };
+    let mut rng = stream(shop.seed, task.round, task.number, purpose);
+    let structure = &shop.structure;
+    match proposal {
+        Proposal::Point(at) => at.to_vec(),
+        Proposal::Uniform => start::uniform(structure, &mut rng),
+        Proposal::Spread(number) => {
+            // The same offsets for all points of the sequence.
+            let mut offsets = stream(shop.seed, u64::MAX, 0, Purpose::Task);
+            start::spread(structure, *number, &mut offsets, &mut rng)
+        }
+        Proposal::Moved { from, kind, step } => kind.apply(structure, from, *step, &mut rng),
+    }
+}
