@@ -99,7 +99,7 @@ fn reduce_large(x: f64) -> (f64, f64, u64) {
         let next = if shift == 0 { 0 } else { TWO_OVER_PI[place + 1] >> (64 - shift) };
         TWO_OVER_PI[place] << shift | next
     };
-    // mantissa * 0.w0 w1 w2 w3, in units of 2^-256 times 2^(exponent - skip), which is 4.
+    // mantissa * 0.w0 w1 w2 w3, in units of 2^-256 times 2^(exponent - skip).
     let mut product = [0_u64; 5];
     let mut carry = 0_u128;
     for number in (0..4).rev() {
@@ -108,10 +108,15 @@ fn reduce_large(x: f64) -> (f64, f64, u64) {
         carry = sum >> 64;
     }
     product[0] = carry as u64;
-    // The point stands behind product[0]; exponent - skip = 2, so two more digits belong to the whole part.
-    let mut quadrant = (product[0] << 2 | product[1] >> 62) & 3;
-    let mut fraction =
-        [product[1] << 2 | product[2] >> 62, product[2] << 2 | product[3] >> 62, product[3] << 2 | product[4] >> 62];
+    // The point stands behind product[0], moved by exponent - skip places: 2 for the hugest angles, less below.
+    let point = (256 - (exponent - skip as i64)) as usize;
+    let digits = |place: usize| {
+        let (limb, shift) = (4 - place / 64, place % 64);
+        let above = if shift == 0 || limb == 0 { 0 } else { product[limb - 1] << (64 - shift) };
+        product[limb] >> shift | above
+    };
+    let mut quadrant = digits(point) & 3;
+    let mut fraction = [digits(point - 64), digits(point - 128), digits(point - 192)];
     let negative = fraction[0] >> 63 == 1;
     if negative {
         quadrant = (quadrant + 1) & 3;
