@@ -30,12 +30,12 @@ enum Command {
     Minima(minima::Minima),
 }
 
-/// What a command leaves: text for standard output, and whether it has something to report as failed.
+/// What a command leaves.
 pub(crate) struct End {
     /// For standard output.
     pub(crate) text: String,
-    /// Whether the work ended with something failed.
-    pub(crate) failed: bool,
+    /// The exit status: 0, or 1 where the work has something to report as failed, or 2 for a refused problem.
+    pub(crate) status: u8,
 }
 
 /// Runs the program: 0 done, 1 something failed, 2 refused, 3 an outside failure, 70 a fault of the program.
@@ -63,8 +63,8 @@ fn run() -> ExitCode {
         Command::Check(check) => check.run(),
         Command::Minima(minima) => minima.run(),
     };
-    match end.and_then(|end| say(&end.text).map(|()| end.failed)) {
-        Ok(failed) => ExitCode::from(u8::from(failed)),
+    match end.and_then(|end| say(&end.text).map(|()| end.status)) {
+        Ok(status) => ExitCode::from(status),
         Err(failure) => {
             warn(&failure.to_string());
             ExitCode::from(status(&failure))

@@ -48,6 +48,6 @@ impl Minima {
         } else {
             minima_text(&file, self.most, width())
         };
-        Ok(End { text, failed: false })
+        Ok(End { text, status: 0 })
     }
 }

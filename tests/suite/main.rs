@@ -1,7 +1,10 @@
 //! The integration tests, in reading order.
 
-/// What the others share: problems from text, hunts, published tables.
-mod support;
+/// A fresh folder and the real program.
+mod folder;
 
-/// The compiled kernel against independent ways to the same numbers.
-mod kernel;
+/// Every module imports its own folder and lower floors only.
+mod floors;
+
+/// The commands: whole outputs, wrong input of every kind, exit statuses.
+mod commands;
