@@ -18,7 +18,7 @@
 //! [`kernel`] compiles them, [`evaluate`] runs them, [`run`] keeps the files of a hunt, [`report`] shows them.
 
 pub mod base;
-//pub mod descent;
+pub mod descent;
 pub mod evaluate;
 pub mod kernel;
 pub mod landscape;

@@ -105,6 +105,13 @@ impl Builder {
         }
         let mut evaluator = TermEvaluator::new(&self.terms, &self.tables, &self.lookups, &[]);
         let value = evaluator.value(id).unwrap_or(f64::NAN);
+        // Infinity may be written, not computed: as a bound, or where an `if` shuts a region out. Where a condition
+        // that is known not to hold stands around this, the value does not matter.
+        let parts = self.terms.get(id).parts().all(|part| self.number(part).is_none_or(f64::is_finite));
+        let idle = |condition: &IndexCondition| condition.levels() == 0 && !condition.holds(&[], &self.lookups);
+        if (value.is_nan() || value.is_infinite() && parts) && !self.conditions.iter().any(idle) {
+            return self.refuse(Mistake::NotFinite { value }, span);
+        }
         self.constant(value)
     }
 
@@ -295,10 +302,9 @@ impl Builder {
         let mut at = Affine::default();
         let mut stride = 1;
         for &(level, low, high) in used.iter().rev() {
-            at = at
-                .plus(&Affine::level(level), stride)
-                .and_then(|at| at.plus(&Affine::constant(low), -stride))
-                .unwrap_or_default();
+            let next = at.plus(&Affine::level(level), stride).and_then(|at| at.plus(&Affine::constant(low), -stride));
+            let Some(next) = next else { return self.refuse(Mistake::RangeUnproven, span) };
+            at = next;
             stride *= (high - low + 1).max(1);
         }
         let mut values = Vec::with_capacity(size as usize);
@@ -458,8 +464,15 @@ impl Builder {
         if first <= low && high <= last {
             return Ok(());
         }
-        let mut proof = Proof { builder: self, index, first, last, levels: vec![0; 64], steps: 0 };
         let depth = self.loops.len();
+        // Whether anything inside a loop depends on its index.
+        let mut inside = index.levels() | self.conditions.iter().fold(0, |levels, part| levels | part.levels());
+        let mut matters = vec![false; depth];
+        for level in (0..depth).rev() {
+            matters[level] = inside >> level & 1 == 1;
+            inside |= self.loops[level].first.levels() | self.loops[level].last.levels();
+        }
+        let mut proof = Proof { builder: self, index, first, last, matters, levels: vec![0; 64], steps: 0 };
         match proof.search(0, depth) {
             Ok(None) => Ok(()),
             Ok(Some((value, levels))) => {
@@ -525,6 +538,8 @@ struct Proof<'a> {
     index: &'a Index,
     first: i64,
     last: i64,
+    /// For each loop, whether its index matters: where it does not, its first turn stands for all.
+    matters: Vec<bool>,
     levels: Vec<i64>,
     steps: u64,
 }
@@ -551,6 +566,9 @@ impl Proof<'_> {
             self.levels[level] = value;
             if let Some(found) = self.search(level + 1, depth)? {
                 return Ok(Some(found));
+            }
+            if !self.matters[level] {
+                break;
             }
         }
         Ok(None)

@@ -45,6 +45,11 @@ pub fn is_function(name: &str) -> bool {
     OTHER.contains(&name) || UNARY.iter().any(|entry| entry.0 == name)
 }
 
+/// What a misspelt function may have been: those of the language, then those of the file.
+pub(super) fn function_candidates(own: Vec<String>) -> Vec<String> {
+    UNARY.iter().map(|entry| entry.0).chain(OTHER).map(str::to_string).chain(own).collect()
+}
+
 impl Checker<'_> {
     pub(super) fn call(&mut self, name: &Name, arguments: &[Expression], span: Span) -> Outcome<Value> {
         if let Some(&(_, operation)) = UNARY.iter().find(|entry| entry.0 == name.text) {
@@ -110,8 +115,7 @@ impl Checker<'_> {
     /// A function of the file: its body with the arguments in place of the parameters.
     fn call_own(&mut self, name: &Name, arguments: &[Expression], span: Span) -> Outcome<Value> {
         if !self.is_defined(&name.text) {
-            let known = UNARY.iter().map(|entry| entry.0).chain(OTHER).map(str::to_string);
-            let candidates: Vec<String> = known.chain(self.function_names()).collect();
+            let candidates = function_candidates(self.function_names());
             let meant = suggest(&name.text, candidates.iter().map(String::as_str));
             return self.build.refuse(Mistake::UnknownFunction { name: name.text.clone(), meant }, name.span);
         }

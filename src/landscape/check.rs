@@ -157,6 +157,10 @@ pub(super) struct Checker<'a> {
     pub(super) kinks: Vec<(&'static str, Span)>,
     pub(super) domains: Vec<(Domain, TermId, Span)>,
     path: Vec<String>,
+    /// How deep the formula at hand nests, definitions and calls included, and how much was looked at in all.
+    pub(super) depth: usize,
+    pub(super) steps: u64,
+    pub(super) overgrown: bool,
 }
 
 /// Where a function is defined, to be compared with where its argument can be.
@@ -166,6 +170,10 @@ pub(super) enum Domain {
     Positive,
     NotNegative,
     Unit,
+    /// Of a negative whole power.
+    Base,
+    /// Of a power that is not whole.
+    RealBase,
 }
 
 impl<'a> Checker<'a> {
@@ -183,6 +191,9 @@ impl<'a> Checker<'a> {
             kinks: Vec::new(),
             domains: Vec::new(),
             path: Vec::new(),
+            depth: 0,
+            steps: 0,
+            overgrown: false,
         }
     }
 
@@ -209,6 +220,7 @@ impl<'a> Checker<'a> {
             let _ = self.resolve(name);
         }
         let mut title = None;
+        let mut shown: Vec<(&str, Span)> = Vec::new();
         let mut objective: Option<(Span, bool, Outcome<TermId>, Span)> = None;
         let (mut shows, mut symmetries): (Vec<Show>, Vec<Symmetry>) = (Vec::new(), Vec::new());
         for statement in &file.statements {
@@ -227,13 +239,13 @@ impl<'a> Checker<'a> {
                     None => objective = Some((*word, *maximise, self.number(value), value.span)),
                 },
                 StatementKind::Show { name, indices, value } => {
-                    if shows.iter().any(|show| show.name == name.text) {
-                        let first = Span::default();
+                    if let Some(&(_, first)) = shown.iter().find(|known| known.0 == name.text) {
                         let _ =
                             self.build.refuse::<()>(Mistake::Redefined { name: name.text.clone(), first }, name.span);
                     } else if let Ok(show) = self.show(name, indices, value) {
                         shows.push(show);
                     }
+                    shown.push((&name.text, name.span));
                     self.build.loops.clear();
                     self.locals.clear();
                 }
@@ -245,6 +257,13 @@ impl<'a> Checker<'a> {
                     }
                 }
                 _ => {}
+            }
+        }
+        for (_, name) in &names {
+            let uncalled = self.definitions.get(name).filter(|definition| !definition.used);
+            if let Some(Progress::Done(Ok(Symbol::Function(function)))) = uncalled.map(|uncalled| &uncalled.progress) {
+                let function = Rc::clone(function);
+                self.demand_names(&function);
             }
         }
         let end = file.statements.last().map_or(Span::default(), |statement| statement.span);
@@ -293,7 +312,14 @@ impl<'a> Checker<'a> {
         if is_function(&name.text) || ["pi", "e", "inf"].contains(&name.text.as_str()) {
             let _ = self.build.refuse::<()>(Mistake::TakenName(name.text.clone()), name.span);
         } else if let Some(known) = self.definitions.get(&name.text) {
-            // Entries of a recurrence repeat the name; they are refused as such when the first is worked out.
+            let family = |number: usize| {
+                matches!(self.file.statements[number].kind, StatementKind::Let { form: LetForm::Family(_), .. })
+            };
+            if family(statement) && family(known.statement) {
+                // The parts of a recurrence repeat the name.
+                let _ = self.build.refuse::<()>(Mistake::NotYet("recurrences are"), name.span);
+                return;
+            }
             let first = known.span;
             let _ = self.build.refuse::<()>(Mistake::Redefined { name: name.text.clone(), first }, name.span);
         } else {
@@ -317,8 +343,7 @@ impl<'a> Checker<'a> {
             return Ok(Symbol::Value(Value::Number(self.build.constant(constant)?)));
         }
         let Some(definition) = self.definitions.get_mut(name) else {
-            let mut candidates: Vec<String> = self.definitions.keys().cloned().collect();
-            candidates.sort();
+            let candidates = self.defined_names();
             let locals = self.locals.iter().map(|local| local.0.as_str());
             let meant = suggest(name, locals.chain(candidates.iter().map(String::as_str)).chain(["pi", "inf"]));
             if is_function(name) {
@@ -369,6 +394,12 @@ impl<'a> Checker<'a> {
         self.definitions.contains_key(name) || self.locals.iter().any(|local| local.0 == name)
     }
 
+    pub(super) fn defined_names(&self) -> Vec<String> {
+        let mut names: Vec<String> = self.definitions.keys().cloned().collect();
+        names.sort();
+        names
+    }
+
     pub(super) fn function_names(&self) -> Vec<String> {
         let is_function = |definition: &Definition| {
             matches!(
@@ -415,14 +446,19 @@ impl<'a> Checker<'a> {
         }
     }
 
-    pub(super) fn warn_kink(&mut self, operator: Reduction, word: Span, body: &Expression) {
-        let name = match operator {
-            Reduction::Minimum => "min",
-            Reduction::Maximum => "max",
-            _ => return,
-        };
-        let _ = body;
-        self.kinks.push((name, word));
+    pub(super) fn note_reduction(&mut self, operator: Reduction, of: TermId, word: Span) {
+        match operator {
+            Reduction::Minimum if self.build.terms.info(of).unknowns => self.kinks.push(("min", word)),
+            Reduction::Maximum if self.build.terms.info(of).unknowns => self.kinks.push(("max", word)),
+            _ => {}
+        }
+    }
+
+    /// Whether a name stands for an unknown in the text, well declared or not.
+    pub(super) fn is_unknown(&self, name: &str) -> bool {
+        self.definitions.get(name).is_some_and(|definition| {
+            matches!(self.file.statements[definition.statement].kind, StatementKind::Unknown { .. })
+        })
     }
 
     pub(super) fn note_unary(&mut self, operation: Unary, of: TermId, word: Span, argument: Span) {
@@ -440,9 +476,20 @@ impl<'a> Checker<'a> {
         }
     }
 
-    pub(super) fn note_domain(&mut self, operation: Binary, right: TermId, span: Span) {
-        if operation == Binary::Divide && self.build.terms.info(right).unknowns {
-            self.domains.push((Domain::NotZero, right, span));
+    pub(super) fn note_binary(&mut self, operation: Binary, left: TermId, right: TermId, a: Span, b: Span) {
+        match operation {
+            Binary::Divide if self.build.terms.info(right).unknowns => {
+                self.domains.push((Domain::NotZero, right, b));
+            }
+            Binary::Power if self.build.terms.info(left).unknowns => {
+                let domain = match self.build.number(right) {
+                    Some(exponent) if exponent.floor() == exponent && exponent < 0.0 => Domain::Base,
+                    Some(exponent) if exponent.floor() == exponent => return,
+                    _ => Domain::RealBase,
+                };
+                self.domains.push((domain, left, a));
+            }
+            _ => {}
         }
     }
 

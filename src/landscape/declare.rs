@@ -28,8 +28,12 @@ impl Checker<'_> {
             }
             StatementKind::Let { form: LetForm::Value, value, .. } => self.value(value).map(Symbol::Value),
             StatementKind::Let { form: LetForm::Function(parameters), value, .. } => {
-                for parameter in parameters {
+                for (number, parameter) in parameters.iter().enumerate() {
                     self.demand_new(parameter)?;
+                    if let Some(first) = parameters[..number].iter().find(|other| other.text == parameter.text) {
+                        let (name, first) = (parameter.text.clone(), first.span);
+                        return self.build.refuse(Mistake::Redefined { name, first }, parameter.span);
+                    }
                 }
                 Ok(Symbol::Function(Rc::new(Function { parameters: parameters.clone(), body: value.clone() })))
             }

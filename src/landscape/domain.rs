@@ -25,6 +25,8 @@ impl Checker<'_> {
                 Domain::NotZero if low <= 0.0 && 0.0 <= high => "this divisor can be 0",
                 Domain::Positive if low <= 0.0 => "this logarithm can be of 0 or less",
                 Domain::NotNegative if low < 0.0 => "this square root can be of less than 0",
+                Domain::Base if low <= 0.0 && 0.0 <= high => "the base of this negative power can be 0",
+                Domain::RealBase if low < 0.0 => "the base of this power, which is not whole, can be less than 0",
                 Domain::Unit if low < -1.0 || 1.0 < high => "this can leave -1..1, where the function is defined,",
                 _ => continue,
             };

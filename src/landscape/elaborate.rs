@@ -19,6 +19,12 @@ const MAX_UNROLLED: i64 = 4;
 /// Vectors of at most this length are written out in `dot`, `norm` and whole-family reductions.
 const MAX_LISTED: usize = 8;
 
+/// Formulas may nest this deep, functions and definitions that they lean on included.
+pub(super) const MAX_DEPTH: usize = 400;
+
+/// All formulas of a file, functions written out, may have this many parts.
+const MAX_STEPS: u64 = 2_000_000;
+
 impl Checker<'_> {
     /// An expression that must be a number.
     pub(super) fn number(&mut self, expression: &Expression) -> Outcome<TermId> {
@@ -45,7 +51,25 @@ impl Checker<'_> {
         self.build.refuse(if unknowns { Mistake::NotConstant } else { Mistake::LoopInConstant }, expression.span)
     }
 
+    /// What an expression means.
+    ///
+    /// Everything that nests comes by here, calls and definitions included: so this is where depth and growth are
+    /// limited. A chain of functions that each call the next twice doubles with every link.
     pub(super) fn value(&mut self, expression: &Expression) -> Outcome<Value> {
+        self.steps += 1;
+        if self.depth >= MAX_DEPTH || self.steps > MAX_STEPS {
+            if !std::mem::replace(&mut self.overgrown, true) {
+                let _ = self.build.refuse::<()>(Mistake::TooIntricate, expression.span);
+            }
+            return Err(super::build::Told);
+        }
+        self.depth += 1;
+        let value = self.understand(expression);
+        self.depth -= 1;
+        value
+    }
+
+    fn understand(&mut self, expression: &Expression) -> Outcome<Value> {
         let span = expression.span;
         match &expression.kind {
             ExpressionKind::Number(number) => Ok(Value::Number(self.build.constant(*number)?)),
@@ -76,8 +100,8 @@ impl Checker<'_> {
             | ExpressionKind::Not(_) => Ok(Value::Condition(self.condition(expression)?)),
             ExpressionKind::If { condition, then, otherwise } => self.conditional(condition, then, otherwise, span),
             ExpressionKind::Reduce { operator, word, indices, condition, body } => {
-                self.warn_kink(*operator, *word, body);
                 let id = self.reduction(*operator, indices, condition.as_deref(), body, span)?;
+                self.note_reduction(*operator, id, *word);
                 Ok(Value::Number(id))
             }
         }
@@ -263,7 +287,7 @@ impl Checker<'_> {
             (Value::Condition(_), _) => return self.build.refuse(Mistake::NeedsNumberNotCondition, a),
             (_, Value::Condition(_)) => return self.build.refuse(Mistake::NeedsNumberNotCondition, b),
             (Value::Number(left), Value::Number(right)) => {
-                self.note_domain(operation, right, b);
+                self.note_binary(operation, left, right, a, b);
                 return Ok(Value::Number(self.build.binary(operation, left, right, span)?));
             }
             (Value::Array(left), Value::Array(right)) => {
@@ -282,6 +306,9 @@ impl Checker<'_> {
                 (Operand::Number(left), Operand::Array(right), axes)
             }
             (Value::Array(left), Value::Number(right)) if matches!(operation, Binary::Multiply | Binary::Divide) => {
+                if operation == Binary::Divide {
+                    self.note_binary(operation, right, right, b, b);
+                }
                 let axes = left.axes.clone();
                 (Operand::Array(left), Operand::Number(right), axes)
             }

@@ -140,6 +140,8 @@ pub enum Mistake {
         /// The limit.
         limit: f64,
     },
+    /// Formulas that nest or grow beyond measure when their functions are expanded.
+    TooIntricate,
     /// Something that this version does not have yet.
     NotYet(&'static str),
     /// A promise about something that is no unknown.
@@ -179,6 +181,8 @@ impl Mistake {
             Mistake::Unused(..) | Mistake::LeavesDomain(_) | Mistake::Kink(_) => Severity::Warning,
             _ => Severity::Refusal,
         };
+        #[cfg(test)]
+        tests::TOLD.with_borrow_mut(|told| told.insert(self.variant()));
         let (message, remedy) = self.words();
         Diagnostic { severity, span, message, notes: self.notes(), remedy }
     }
@@ -267,6 +271,9 @@ impl Mistake {
             Mistake::SampledOpen => ("the region to start from must have finite ends".into(), None),
             Mistake::CyclicOpen => ("the two ends of a cyclic unknown must be finite".into(), None),
             Mistake::BadBound => ("a bound must be a number".into(), None),
+            Mistake::NotFinite { value } if value.is_nan() => {
+                ("this constant is not a number".into(), some("it lies where the operation has no value"))
+            }
             Mistake::NotFinite { value } => {
                 (format!("this constant is {value}"), some("only `inf` as a bound may be infinite"))
             }
@@ -283,6 +290,10 @@ impl Mistake {
             Mistake::TooMuchWork { work, limit } => (
                 format!("one value would take about {work:.1e} operations"),
                 Some(format!("the limit is {limit:.0e}; are the ranges right?")),
+            ),
+            Mistake::TooIntricate => (
+                "the formulas grow beyond measure here when functions are written out".into(),
+                some("name a value that is used twice by `let`, and let definitions lean on fewer others in a row"),
             ),
             Mistake::NotYet(what) => (format!("{what} not available yet in this version"), None),
             Mistake::PromiseNeedsUnknown(name) => {
@@ -315,4 +326,23 @@ impl Mistake {
 
 fn plural(count: usize) -> &'static str {
     if count == 1 { "is" } else { "are" }
+}
+
+#[cfg(test)]
+pub(super) mod tests {
+    use std::cell::RefCell;
+    use std::collections::BTreeSet;
+
+    use super::Mistake;
+
+    thread_local! {
+        /// The variants that this thread has told, for the test that every one has a golden file.
+        pub static TOLD: RefCell<BTreeSet<String>> = const { RefCell::new(BTreeSet::new()) };
+    }
+
+    impl Mistake {
+        pub(super) fn variant(&self) -> String {
+            format!("{self:?}").split(|c: char| !c.is_alphanumeric()).next().unwrap_or_default().to_string()
+        }
+    }
 }

@@ -11,11 +11,15 @@ mod declare;
 mod domain;
 mod elaborate;
 mod evaluate;
+#[cfg(test)]
+mod goldens;
 pub mod mistake;
 mod names;
 mod promise;
 pub mod symmetry;
 pub mod term;
+mod text;
+mod uncalled;
 mod value;
 
 pub use check::{Checked, OverrideError, Overrides, check};

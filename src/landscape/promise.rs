@@ -51,8 +51,11 @@ impl Checker<'_> {
     fn rows(&mut self, operand: &PromiseOperand) -> Outcome<Vec<Vec<usize>>> {
         let name = &operand.name;
         let Some(family) = self.unknown_family(&name.text) else {
+            if self.is_unknown(&name.text) {
+                // Its declaration was refused.
+                return Err(super::build::Told);
+            }
             if self.is_defined(&name.text) {
-                // An unknown whose own declaration was refused has been told about already.
                 return self.build.refuse(Mistake::PromiseNeedsUnknown(name.text.clone()), name.span);
             }
             let known: Vec<String> = self.unknowns.iter().map(|family| family.name.clone()).collect();

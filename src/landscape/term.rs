@@ -71,7 +71,10 @@ impl Affine {
 
     /// Its value, given those of the levels (`levels[k]` is level k).
     pub fn at(&self, levels: &[i64]) -> i64 {
-        self.factors.iter().fold(self.constant, |sum, &(level, factor)| sum + factor * levels[level as usize])
+        self.factors.iter().fold(self.constant, |sum, &(level, factor)| {
+            // Wraps only for indices that their range check refuses.
+            sum.wrapping_add(factor.wrapping_mul(levels[level as usize]))
+        })
     }
 }
 

@@ -85,7 +85,7 @@ fn main() {
         points.len()
     };
     let mut machines: Vec<LaneMachine> =
-        [4, 8, 16, 32, 64].map(|lanes| LaneMachine::new(&Arc::clone(&kernel.gradient), lanes)).into();
+        [4, 8, 16, 32].map(|lanes| LaneMachine::new(&Arc::clone(&kernel.gradient), lanes)).into();
     for machine in &mut machines {
         let lanes = machine.n_lanes();
         for (place, value) in machine.rows_mut(Role::Unknowns).iter_mut().enumerate() {

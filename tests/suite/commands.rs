@@ -135,3 +135,38 @@ fn help_says_the_job_and_names_only_what_is_there() {
         assert!(!ran.out.contains(later), "{later} is not built yet");
     }
 }
+
+#[test]
+fn minima_shows_a_run_as_table_json_and_csv() {
+    let folder = Folder::new();
+    let text = include_str!("../data/edge/minima.json");
+    folder.put("results/wells/minima.json", text);
+    let table = folder.run(&["minima", "wells"]);
+    assert_eq!((table.status, table.err.as_str()), (Some(0), ""));
+    assert_eq!(table.out, include_str!("../data/edge/minima.txt"));
+    assert_eq!(folder.run(&["minima", "results/wells"]).out, table.out, "by path as by name");
+    assert_eq!(folder.run(&["minima", "wells", "--json"]).out, text, "written as it was read");
+    let csv = folder.run(&["minima", "wells", "--csv"]).out;
+    assert_eq!(
+        csv.lines().next(),
+        Some(
+            "rank,value,kind,residual,softest,stiffest,hits survey,first evaluation,first round,first heuristic,x[1],x[2]"
+        )
+    );
+    assert_eq!(csv.lines().nth(1), Some("1,0,interior,0,8,8,12,31,0,survey,-1,-1"));
+}
+
+#[test]
+fn a_reader_who_leaves_early_is_no_failure() {
+    use std::process::{Command, Stdio};
+    let folder = Folder::new();
+    folder.put("wells.land", WELLS);
+    let mut child = Command::new(env!("CARGO_BIN_EXE_thalweg"))
+        .args(["check", "wells.land"])
+        .current_dir(folder.path())
+        .stdout(Stdio::piped())
+        .spawn()
+        .unwrap();
+    drop(child.stdout.take());
+    assert_eq!(child.wait().unwrap().code(), Some(0));
+}

@@ -4,44 +4,51 @@ use std::collections::HashMap;
 
 use crate::kernel::program::{BufferId, Instruction, Program, Register, Role, Step};
 use crate::landscape::term::{Affine, Index, IndexCondition};
-use crate::numbers::operation::{Binary, Relation, Unary};
+use crate::numbers::operation::{Binary, Unary};
 
-/// A row of memory: fixed, or moved by a cursor.
-#[derive(Clone, Copy, Debug, Default)]
-pub struct Row {
-    /// The row without the cursor.
-    pub base: u32,
-    /// The cursor whose value is added; cursor 0 is always 0.
-    pub cursor: u32,
-}
+/// The place of a pointer to a row.
+pub type Pointer = u32;
 
 /// What an operation does with its rows.
-#[derive(Clone, Copy, Debug)]
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[repr(u8)]
 pub enum Kind {
-    /// `to = number`, in all lanes.
-    Fill(f64),
-    /// `to = value of the cursor of a`.
+    /// `to = numbers[extra]`, in all lanes.
+    Fill,
+    /// `to = the counter's index number extra`.
     Number,
-    /// `to = tables[table][cursor of a]`.
-    Table(u32),
+    /// `to = tables[..]` at a moving place, number `extra`.
+    Table,
     /// `to = a`
     Copy,
-    /// `to = operation(a)`
-    Unary(Unary),
-    /// `to = operation(a, b)`
-    Binary(Binary),
+    /// `to = a + b`
+    Add,
+    /// `to = a - b`
+    Subtract,
+    /// `to = a * b`
+    Multiply,
     /// `to = a * b + c`, rounded twice.
     MultiplyAdd,
-    /// `to = a relation b ? c : d`
-    Select(Relation),
-    /// Begins a loop.
-    Begin(u32),
-    /// Ends a turn of a loop.
-    End(u32),
-    /// Goes on at the place unless the condition holds.
-    Unless(u32, u32),
-    /// Goes on at the place.
-    Jump(u32),
+    /// `to = 1 / a`
+    Reciprocal,
+    /// `to = -a`
+    Negate,
+    /// `to = sqrt(a)`
+    SquareRoot,
+    /// `to = Unary::ALL[extra](a)`
+    Unary,
+    /// `to = Binary::ALL[extra](a, b)`
+    Binary,
+    /// `to = a Relation::ALL[extra] b ? c : d`
+    Select,
+    /// Begins loop `extra`.
+    Begin,
+    /// Ends a turn of loop `extra`.
+    End,
+    /// Goes on at the target of branch `extra` unless its condition holds.
+    Unless,
+    /// Goes on at operation `extra`.
+    Jump,
 }
 
 /// One operation.
@@ -50,9 +57,11 @@ pub struct Operation {
     /// What it does.
     pub kind: Kind,
     /// The target.
-    pub to: Row,
+    pub to: Pointer,
     /// The operands.
-    pub from: [Row; 4],
+    pub from: [Pointer; 4],
+    /// A number whose meaning depends on the kind.
+    pub extra: u32,
 }
 
 /// A loop.
@@ -74,15 +83,33 @@ pub struct Loop {
     pub body: u32,
 }
 
-/// An index that a loop keeps up to date.
+/// A pointer or a place that a loop keeps up to date.
 #[derive(Clone, Debug)]
 pub struct Cursor {
-    /// Its number.
-    pub number: u32,
+    /// What it moves.
+    pub moves: Moves,
     /// The index.
     pub index: Index,
-    /// By how much the affine form moves with each turn.
-    pub stride: i64,
+    /// By how much the index moves with each turn; `None` where it is looked up, and worked out each time.
+    pub stride: Option<i64>,
+}
+
+/// What a cursor moves.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Moves {
+    /// A pointer to the row at the index behind a first row.
+    Pointer(Pointer, usize),
+    /// Place number so much of [`super::run::State`]'s places, with what stands there.
+    Place(u32),
+}
+
+/// A branch on an index condition.
+#[derive(Clone, Debug)]
+pub struct Branch {
+    /// The condition.
+    pub condition: IndexCondition,
+    /// The operation to go on at where it does not hold.
+    pub otherwise: u32,
 }
 
 /// A program as flat code.
@@ -92,12 +119,14 @@ pub struct Code {
     pub operations: Vec<Operation>,
     /// The loops.
     pub loops: Vec<Loop>,
-    /// The index conditions.
-    pub conditions: Vec<IndexCondition>,
-    /// The cursors outside all loops.
-    pub outer: Vec<Cursor>,
-    /// How many cursors there are.
-    pub n_cursors: usize,
+    /// The branches.
+    pub branches: Vec<Branch>,
+    /// Numbers that rows are filled with.
+    pub numbers: Vec<f64>,
+    /// The row that each pointer points to at the start.
+    pub pointers: Vec<usize>,
+    /// For each moving place: the table that it is a place of, if it is not a number itself.
+    pub places: Vec<Option<u32>>,
     /// The first row of each buffer.
     pub buffer_rows: Vec<usize>,
     /// How many rows there are.
@@ -107,8 +136,8 @@ pub struct Code {
 }
 
 impl Code {
-    /// Makes the flat code of a program.
-    pub fn new(program: &Program) -> Self {
+    /// Makes the flat code of a program; `None` for one that needs more than 2^32 pointers.
+    pub fn new(program: &Program) -> Option<Self> {
         let mut buffer_rows = Vec::new();
         let mut rows = program.registers as usize;
         for buffer in &program.buffers {
@@ -120,16 +149,18 @@ impl Code {
         let code = Code {
             operations: Vec::new(),
             loops: Vec::new(),
-            conditions: Vec::new(),
-            outer: Vec::new(),
-            n_cursors: 1,
+            branches: Vec::new(),
+            numbers: Vec::new(),
+            pointers: Vec::new(),
+            places: Vec::new(),
             buffer_rows,
             rows,
             depth: 0,
         };
-        let mut maker = Maker { program, code, assignments, aliases: HashMap::new(), open: Vec::new() };
-        maker.block(&program.body);
-        maker.code
+        let mut maker =
+            Maker { program, code, assignments, aliases: HashMap::new(), fixed: HashMap::new(), open: Vec::new() };
+        maker.block(&program.body)?;
+        Some(maker.code)
     }
 }
 
@@ -155,16 +186,18 @@ struct Maker<'a> {
     code: Code,
     assignments: Vec<u32>,
     /// Registers that are a row of a read-only buffer and nothing else.
-    aliases: HashMap<Register, Row>,
+    aliases: HashMap<Register, Pointer>,
+    /// Pointers to rows that do not move.
+    fixed: HashMap<usize, Pointer>,
     /// The loops around this place.
     open: Vec<usize>,
 }
 
 impl Maker<'_> {
-    fn block(&mut self, steps: &[Step]) {
+    fn block(&mut self, steps: &[Step]) -> Option<()> {
         for step in steps {
             match step {
-                Step::Do(instruction) => self.instruction(instruction),
+                Step::Do(instruction) => self.instruction(instruction)?,
                 Step::Loop { first, last, descending, body } => {
                     let number = self.code.loops.len();
                     self.code.loops.push(Loop {
@@ -176,135 +209,173 @@ impl Maker<'_> {
                         exit: 0,
                         body: 0,
                     });
-                    self.put(Kind::Begin(number as u32), Row::default(), [Row::default(); 4]);
+                    self.put(Kind::Begin, 0, [0; 4], number as u32);
                     self.code.loops[number].body = self.here();
                     self.open.push(number);
                     self.code.depth = self.code.depth.max(self.open.len());
-                    self.block(body);
+                    self.block(body)?;
                     self.open.pop();
-                    self.put(Kind::End(number as u32), Row::default(), [Row::default(); 4]);
+                    self.put(Kind::End, 0, [0; 4], number as u32);
                     self.code.loops[number].exit = self.here();
                 }
                 Step::When { condition, then, otherwise } => {
-                    let number = self.code.conditions.len() as u32;
-                    self.code.conditions.push(condition.clone());
-                    let branch = self.code.operations.len();
-                    self.put(Kind::Unless(number, 0), Row::default(), [Row::default(); 4]);
-                    self.block(then);
+                    let branch = self.code.branches.len();
+                    self.code.branches.push(Branch { condition: condition.clone(), otherwise: 0 });
+                    self.put(Kind::Unless, 0, [0; 4], branch as u32);
+                    self.block(then)?;
                     let jump = self.code.operations.len();
-                    self.put(Kind::Jump(0), Row::default(), [Row::default(); 4]);
-                    self.code.operations[branch].kind = Kind::Unless(number, self.here());
-                    self.block(otherwise);
-                    self.code.operations[jump].kind = Kind::Jump(self.here());
+                    self.put(Kind::Jump, 0, [0; 4], 0);
+                    self.code.branches[branch].otherwise = self.here();
+                    self.block(otherwise)?;
+                    self.code.operations[jump].extra = self.here();
                 }
             }
         }
+        Some(())
     }
 
     fn here(&self) -> u32 {
         self.code.operations.len() as u32
     }
 
-    fn put(&mut self, kind: Kind, to: Row, from: [Row; 4]) {
-        self.code.operations.push(Operation { kind, to, from });
+    fn put(&mut self, kind: Kind, to: Pointer, from: [Pointer; 4], extra: u32) {
+        self.code.operations.push(Operation { kind, to, from, extra });
     }
 
-    fn row(&self, register: Register) -> Row {
-        self.aliases.get(&register).copied().unwrap_or(Row { base: register.0, cursor: 0 })
+    fn new_pointer(&mut self, row: usize) -> Option<Pointer> {
+        self.code.pointers.push(row);
+        Pointer::try_from(self.code.pointers.len() - 1).ok()
     }
 
-    /// The cursor of an index in the innermost loop; cursor 0 for a constant, which goes to the base.
-    fn place(&mut self, base: usize, at: &Index) -> Row {
-        if let Some(constant) = at.constant() {
-            return Row { base: (base as i64 + constant) as u32, cursor: 0 };
+    fn fixed(&mut self, row: usize) -> Option<Pointer> {
+        if let Some(&known) = self.fixed.get(&row) {
+            return Some(known);
         }
-        let depth = self.open.len();
-        let cursors = match self.open.last() {
-            Some(&number) => &mut self.code.loops[number].cursors,
-            None => &mut self.code.outer,
+        let pointer = self.new_pointer(row)?;
+        self.fixed.insert(row, pointer);
+        Some(pointer)
+    }
+
+    fn register(&mut self, register: Register) -> Option<Pointer> {
+        match self.aliases.get(&register) {
+            Some(&alias) => Some(alias),
+            None => self.fixed(register.0 as usize),
+        }
+    }
+
+    /// The pointer to a row of a buffer, kept by the innermost loop where it moves.
+    fn buffer(&mut self, buffer: BufferId, at: &Index) -> Option<Pointer> {
+        let first = self.code.buffer_rows[buffer.0 as usize];
+        let Some(&number) = self.open.last().filter(|_| at.constant().is_none()) else {
+            return self.fixed((first as i64 + at.constant().unwrap_or(0)) as usize);
         };
-        if let Some(known) = cursors.iter().find(|cursor| cursor.index == *at) {
-            return Row { base: base as u32, cursor: known.number };
+        for cursor in &self.code.loops[number].cursors {
+            if let Moves::Pointer(pointer, row) = cursor.moves
+                && row == first
+                && cursor.index == *at
+            {
+                return Some(pointer);
+            }
         }
-        let number = self.code.n_cursors as u32;
-        self.code.n_cursors += 1;
-        let Affine { factors, .. } = at.affine();
-        let stride = factors.iter().find(|factor| factor.0 as usize + 1 == depth).map_or(0, |factor| factor.1);
-        cursors.push(Cursor { number, index: at.clone(), stride });
-        Row { base: base as u32, cursor: number }
+        let pointer = self.new_pointer(first)?;
+        self.keep(number, Moves::Pointer(pointer, first), at);
+        Some(pointer)
     }
 
-    fn buffer(&mut self, buffer: BufferId, at: &Index) -> Row {
-        let base = self.code.buffer_rows[buffer.0 as usize];
-        self.place(base, at)
+    /// The number of a moving place.
+    fn place(&mut self, table: Option<u32>, at: &Index) -> u32 {
+        self.code.places.push(table);
+        let place = self.code.places.len() as u32 - 1;
+        // An index that is not constant has a loop around it.
+        if let Some(&number) = self.open.last() {
+            self.keep(number, Moves::Place(place), at);
+        }
+        place
     }
 
-    fn instruction(&mut self, instruction: &Instruction) {
-        let none = Row::default();
-        let to = instruction.target().map_or(none, |to| Row { base: to.0, cursor: 0 });
+    fn keep(&mut self, number: usize, moves: Moves, at: &Index) {
+        let depth = self.open.len();
+        let stride = match at {
+            Index::Lookup { .. } => None,
+            Index::Affine(Affine { factors, .. }) => {
+                Some(factors.iter().find(|factor| factor.0 as usize + 1 == depth).map_or(0, |factor| factor.1))
+            }
+        };
+        self.code.loops[number].cursors.push(Cursor { moves, index: at.clone(), stride });
+    }
+
+    fn fill(&mut self, to: Pointer, value: f64) {
+        self.code.numbers.push(value);
+        self.put(Kind::Fill, to, [0; 4], self.code.numbers.len() as u32 - 1);
+    }
+
+    fn instruction(&mut self, instruction: &Instruction) -> Option<()> {
+        if let Instruction::Load { to, buffer, at } = instruction {
+            let role = self.program.buffers[buffer.0 as usize].role;
+            let fixed = matches!(role, Role::Unknowns | Role::Direction);
+            let row = self.buffer(*buffer, at)?;
+            if fixed && self.assignments[to.0 as usize] == 1 {
+                self.aliases.insert(*to, row);
+            } else {
+                let to = self.fixed(to.0 as usize)?;
+                self.put(Kind::Copy, to, [row, 0, 0, 0], 0);
+            }
+            return Some(());
+        }
+        let mut from = [0; 4];
+        for (place, source) in from.iter_mut().zip(instruction.sources()) {
+            *place = self.register(source)?;
+        }
+        let to = match instruction.target() {
+            Some(to) => self.fixed(to.0 as usize)?,
+            None => 0,
+        };
         match *instruction {
-            Instruction::Constant { bits, .. } => self.put(Kind::Fill(f64::from_bits(bits)), to, [none; 4]),
+            Instruction::Constant { bits, .. } => self.fill(to, f64::from_bits(bits)),
             Instruction::Number { ref index, .. } => match index.constant() {
-                Some(whole) => self.put(Kind::Fill(whole as f64), to, [none; 4]),
+                Some(whole) => self.fill(to, whole as f64),
                 None => {
-                    let place = self.place(0, index);
-                    self.put(Kind::Number, to, [place, none, none, none]);
+                    let place = self.place(None, index);
+                    self.put(Kind::Number, to, from, place);
                 }
             },
             Instruction::Table { table, ref at, .. } => match at.constant() {
-                Some(place) => {
-                    let value = self.program.tables[table as usize][place as usize];
-                    self.put(Kind::Fill(value), to, [none; 4]);
-                }
+                Some(place) => self.fill(to, self.program.tables[table as usize][place as usize]),
                 None => {
-                    let place = self.place(0, at);
-                    self.put(Kind::Table(table), to, [place, none, none, none]);
+                    let place = self.place(Some(table), at);
+                    self.put(Kind::Table, to, from, place);
                 }
             },
-            Instruction::Load { to: target, buffer, ref at } => {
-                let row = self.buffer(buffer, at);
-                let role = self.program.buffers[buffer.0 as usize].role;
-                let fixed = matches!(role, Role::Unknowns | Role::Direction);
-                if fixed && self.assignments[target.0 as usize] == 1 {
-                    self.aliases.insert(target, row);
-                } else {
-                    self.put(Kind::Copy, to, [row, none, none, none]);
-                }
+            Instruction::Store { buffer, ref at, .. } => {
+                let row = self.buffer(buffer, at)?;
+                self.put(Kind::Copy, row, from, 0);
             }
-            Instruction::Store { buffer, ref at, from } => {
-                let (row, from) = (self.buffer(buffer, at), self.row(from));
-                self.put(Kind::Copy, row, [from, none, none, none]);
+            Instruction::Accumulate { buffer, ref at, .. } => {
+                let row = self.buffer(buffer, at)?;
+                self.put(Kind::Add, row, [row, from[0], 0, 0], 0);
             }
-            Instruction::Accumulate { buffer, ref at, from } => {
-                let (row, from) = (self.buffer(buffer, at), self.row(from));
-                self.put(Kind::Binary(Binary::Add), row, [row, from, none, none]);
+            Instruction::Deduct { buffer, ref at, .. } => {
+                let row = self.buffer(buffer, at)?;
+                self.put(Kind::Subtract, row, [row, from[0], 0, 0], 0);
             }
-            Instruction::Deduct { buffer, ref at, from } => {
-                let (row, from) = (self.buffer(buffer, at), self.row(from));
-                self.put(Kind::Binary(Binary::Subtract), row, [row, from, none, none]);
-            }
-            Instruction::Copy { from, .. } => {
-                let from = self.row(from);
-                self.put(Kind::Copy, to, [from, none, none, none]);
-            }
-            Instruction::Unary { operation, of, .. } => {
-                let of = self.row(of);
-                self.put(Kind::Unary(operation), to, [of, none, none, none]);
-            }
-            Instruction::Binary { operation, left, right, .. } => {
-                let (left, right) = (self.row(left), self.row(right));
-                self.put(Kind::Binary(operation), to, [left, right, none, none]);
-            }
-            Instruction::MultiplyAdd { left, right, plus, .. } => {
-                let (left, right, plus) = (self.row(left), self.row(right), self.row(plus));
-                self.put(Kind::MultiplyAdd, to, [left, right, plus, none]);
-            }
-            Instruction::Select { relation, left, right, then, otherwise, .. } => {
-                let from = [left, right, then, otherwise].map(|register| self.row(register));
-                self.put(Kind::Select(relation), to, from);
-            }
-            // A verified program has none.
-            Instruction::Power { .. } => {}
+            Instruction::Copy { .. } => self.put(Kind::Copy, to, from, 0),
+            Instruction::Unary { operation, .. } => match operation {
+                Unary::Reciprocal => self.put(Kind::Reciprocal, to, from, 0),
+                Unary::Negate => self.put(Kind::Negate, to, from, 0),
+                Unary::SquareRoot => self.put(Kind::SquareRoot, to, from, 0),
+                _ => self.put(Kind::Unary, to, from, operation as u32),
+            },
+            Instruction::Binary { operation, .. } => match operation {
+                Binary::Add => self.put(Kind::Add, to, from, 0),
+                Binary::Subtract => self.put(Kind::Subtract, to, from, 0),
+                Binary::Multiply => self.put(Kind::Multiply, to, from, 0),
+                _ => self.put(Kind::Binary, to, from, operation as u32),
+            },
+            Instruction::MultiplyAdd { .. } => self.put(Kind::MultiplyAdd, to, from, 0),
+            Instruction::Select { relation, .. } => self.put(Kind::Select, to, from, relation as u32),
+            // Loads are done above, and a verified program has no whole powers left.
+            Instruction::Load { .. } | Instruction::Power { .. } => {}
         }
+        Some(())
     }
 }

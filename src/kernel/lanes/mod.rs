@@ -1,8 +1,8 @@
 //! The lane interpreter: every instruction over an array of lanes.
 //!
 //! A verified program becomes flat code over one block of memory, in rows of K lanes: the registers first, then the
-//! buffers. An operand is a row, fixed or moved by a *cursor*, the value of an index that its loop keeps up to date; so
-//! what is loaded from a read-only buffer is never copied, and no index is worked out twice.
+//! buffers. An operand is a pointer to a row, fixed or moved on by its loop with each turn; so what is loaded from a
+//! read-only buffer is never copied, and no index is worked out twice.
 //!
 //! The loop over the code is compiled three times, for AVX-512, for AVX2 and for the baseline, and chosen when a machine
 //! is made. All give the same bits: there is no fused multiply-add, and a lane never looks at another.
@@ -25,6 +25,11 @@ pub use run::Build;
 
 use code::Code;
 
+/// Memory comes in cache lines: a row that straddled two would cost twice.
+#[derive(Clone, Copy)]
+#[repr(C, align(64))]
+struct Line([f64; 8]);
+
 /// A program with memory for its lanes; owned by one thread.
 ///
 /// ```
@@ -41,12 +46,12 @@ pub struct LaneMachine {
     code: Code,
     lanes: usize,
     build: Build,
-    memory: Vec<f64>,
+    memory: Vec<Line>,
     state: run::State,
 }
 
 impl LaneMachine {
-    /// A machine with so many lanes: 4, or a multiple of 8. The best build that this processor can run is chosen.
+    /// A machine with 4, 8, 16 or 32 lanes. The best build that this processor can run is chosen.
     ///
     /// # Panics
     /// For another number of lanes.
@@ -57,11 +62,11 @@ impl LaneMachine {
     /// The same with a given build; one that the processor cannot run is replaced by the best that it can.
     ///
     /// # Panics
-    /// For a number of lanes that is neither 4 nor a multiple of 8.
+    /// As above.
     pub fn with_build(program: &Arc<Verified>, lanes: usize, build: Build) -> Self {
-        assert!(lanes == 4 || lanes > 0 && lanes.is_multiple_of(8), "4 lanes, or a multiple of 8");
-        let code = Code::new(program.program());
-        let memory = vec![0.0; code.rows * lanes];
+        assert!([4, 8, 16, 32].contains(&lanes), "4, 8, 16 or 32 lanes");
+        let code = Code::new(program.program()).expect("no program within the work limit has 2^32 rows");
+        let memory = vec![Line([0.0; 8]); (code.rows * lanes).div_ceil(8)];
         let state = run::State::new(&code);
         LaneMachine { program: program.clone(), code, lanes, build: build.min(Build::best()), memory, state }
     }
@@ -74,18 +79,20 @@ impl LaneMachine {
     /// The rows of the buffer with a role: row r, lane l at `r * n_lanes + l`. Empty where the program has no such buffer.
     pub fn rows_mut(&mut self, role: Role) -> &mut [f64] {
         let range = self.range(role);
-        &mut self.memory[range]
+        &mut flat_mut(&mut self.memory)[range]
     }
 
     /// The same, to read.
     pub fn rows(&self, role: Role) -> &[f64] {
-        &self.memory[self.range(role)]
+        &flat(&self.memory)[self.range(role)]
     }
 
     /// Runs the program once on all lanes.
     pub fn run(&mut self) {
-        let program = self.program.program();
-        run::run(self.build, &self.code, program, self.lanes, &mut self.memory, &mut self.state);
+        let (code, program) = (&self.code, self.program.program());
+        let n_places = code.rows * self.lanes;
+        let (memory, state) = (&mut flat_mut(&mut self.memory)[..n_places], &mut self.state);
+        run::run(self.build, run::Run { code, program, lanes: self.lanes, memory, state });
     }
 
     fn range(&self, role: Role) -> std::ops::Range<usize> {
@@ -98,4 +105,14 @@ impl LaneMachine {
             }
         }
     }
+}
+
+fn flat(memory: &[Line]) -> &[f64] {
+    // SAFETY: a line is eight floats in a row (`repr(C)`, its size is its alignment), so lines in a row are floats in a row.
+    unsafe { std::slice::from_raw_parts(memory.as_ptr().cast::<f64>(), memory.len() * 8) }
+}
+
+fn flat_mut(memory: &mut [Line]) -> &mut [f64] {
+    // SAFETY: as above, and the borrow is exclusive.
+    unsafe { std::slice::from_raw_parts_mut(memory.as_mut_ptr().cast::<f64>(), memory.len() * 8) }
 }

@@ -7,7 +7,7 @@ use crate::landscape::term::Index;
 use crate::numbers::functions;
 use crate::numbers::operation::{Binary, Relation, Unary};
 
-use super::code::{Code, Cursor, Kind, Row};
+use super::code::{Code, Cursor, Kind, Moves, Pointer};
 
 /// A build of the interpreter.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
@@ -39,137 +39,142 @@ impl Build {
     }
 }
 
-/// Counters and cursors of a run.
+/// Counters, pointers and places of a run.
 pub struct State {
     counters: Vec<i64>,
     ends: Vec<i64>,
-    /// The affine forms of the cursors.
-    forms: Vec<i64>,
-    /// The values of the cursors.
-    values: Vec<i64>,
+    pointers: Vec<*mut f64>,
+    places: Vec<i64>,
 }
+
+// SAFETY: the pointers are set from the machine's own memory at the beginning of each run and used in that run only.
+unsafe impl Send for State {}
 
 impl State {
     pub fn new(code: &Code) -> Self {
         State {
             counters: vec![0; code.depth],
             ends: vec![0; code.depth],
-            forms: vec![0; code.n_cursors],
-            values: vec![0; code.n_cursors],
+            pointers: vec![std::ptr::null_mut(); code.pointers.len()],
+            places: vec![0; code.places.len()],
         }
     }
 }
 
+/// What a run works with.
+pub struct Run<'a> {
+    pub code: &'a Code,
+    pub program: &'a Program,
+    pub lanes: usize,
+    pub memory: &'a mut [f64],
+    pub state: &'a mut State,
+}
+
 /// Runs the code once.
 ///
-/// `code` must be made from `program`, `memory` have `code.rows * lanes` places, and the program be verified: the caller
-/// is `LaneMachine`, which holds all three.
-pub fn run(build: Build, code: &Code, program: &Program, lanes: usize, memory: &mut [f64], state: &mut State) {
-    assert_eq!(memory.len(), code.rows * lanes);
+/// The code must be made from the program, the memory have `code.rows * lanes` places, and the program be verified: the
+/// caller is `LaneMachine`, which holds all three.
+pub fn run(build: Build, run: Run<'_>) {
+    assert_eq!(run.memory.len(), run.code.rows * run.lanes);
     #[cfg(target_arch = "x86_64")]
     match build {
         // SAFETY: `Build::best` has seen that the processor has these features, and no better build is ever asked for.
-        Build::Avx512 => return unsafe { run_avx512(code, program, lanes, memory, state) },
+        Build::Avx512 => return unsafe { run_avx512(run) },
         // SAFETY: as above.
-        Build::Avx2 => return unsafe { run_avx2(code, program, lanes, memory, state) },
+        Build::Avx2 => return unsafe { run_avx2(run) },
         Build::Baseline => {}
     }
     // SAFETY: the contract of this function.
-    unsafe { run_here(code, program, lanes, memory, state) }
+    unsafe { run_here(run) }
 }
 
 #[cfg(target_arch = "x86_64")]
 #[target_feature(enable = "avx512f,avx512dq,avx512vl")]
-unsafe fn run_avx512(code: &Code, program: &Program, lanes: usize, memory: &mut [f64], state: &mut State) {
+unsafe fn run_avx512(run: Run<'_>) {
     // SAFETY: the caller's contract is that of `run`.
-    unsafe { run_here(code, program, lanes, memory, state) }
+    unsafe { run_here(run) }
 }
 
 #[cfg(target_arch = "x86_64")]
 #[target_feature(enable = "avx2")]
-unsafe fn run_avx2(code: &Code, program: &Program, lanes: usize, memory: &mut [f64], state: &mut State) {
+unsafe fn run_avx2(run: Run<'_>) {
     // SAFETY: the caller's contract is that of `run`.
-    unsafe { run_here(code, program, lanes, memory, state) }
+    unsafe { run_here(run) }
 }
 
 /// # Safety
 /// The contract of [`run`].
 #[inline(always)]
-unsafe fn run_here(code: &Code, program: &Program, lanes: usize, memory: &mut [f64], state: &mut State) {
-    // SAFETY: passed on; rows of 4 lanes are one chunk of 4, others are chunks of 8.
+unsafe fn run_here(run: Run<'_>) {
+    // SAFETY: passed on; the width of a machine is one of these.
     unsafe {
-        if lanes == 4 {
-            interpret::<4>(code, program, 1, memory, state);
-        } else {
-            interpret::<8>(code, program, lanes / 8, memory, state);
+        match run.lanes {
+            4 => interpret::<4, 4>(run),
+            8 => interpret::<8, 8>(run),
+            16 => interpret::<16, 8>(run),
+            _ => interpret::<32, 8>(run),
         }
     }
 }
 
-/// Interprets the code with rows of `n_chunks` chunks of `C` lanes.
+/// Interprets the code with rows of `K` lanes, `C` at a time.
 ///
 /// # Safety
-/// The contract of [`run`], with `lanes = C * n_chunks`.
+/// The contract of [`run`], with `lanes = K`.
 #[inline(always)]
-unsafe fn interpret<const C: usize>(
-    code: &Code,
-    program: &Program,
-    n_chunks: usize,
-    memory: &mut [f64],
-    state: &mut State,
-) {
-    let lanes = C * n_chunks;
+unsafe fn interpret<const K: usize, const C: usize>(run: Run<'_>) {
+    let Run { code, program, memory, state, .. } = run;
     let memory = memory.as_mut_ptr();
-    enter(&code.outer, &state.counters, &program.lookups, &mut state.forms, &mut state.values);
+    for (pointer, &row) in state.pointers.iter_mut().zip(&code.pointers) {
+        // SAFETY: the rows of pointers that do not move lie in the memory; those that do are set by their loops before
+        // they are used, and start at the first row of their buffer.
+        *pointer = unsafe { memory.add(row * K) };
+    }
+    let operations = code.operations.as_ptr();
+    let n_operations = code.operations.len();
     let mut place = 0;
-    while let Some(operation) = code.operations.get(place) {
+    while place < n_operations {
+        // SAFETY: the place is below the number of operations.
+        let operation = unsafe { &*operations.add(place) };
         place += 1;
-        let values = &state.values;
-        // SAFETY: cursors are numbered below `n_cursors`, which is the length of `values`; the verifier has shown that
-        // every index stays inside its buffer, so every row lies inside the memory.
-        let row = |row: Row| unsafe {
-            let at = i64::from(row.base) + values.get_unchecked(row.cursor as usize);
-            memory.add(at as usize * lanes)
-        };
+        let pointers = state.pointers.as_ptr();
+        // SAFETY: pointers are numbered below the length of `pointers`, and each points to a row inside the memory: the
+        // verifier has shown that every index stays inside its buffer.
+        let at = |pointer: Pointer| unsafe { *pointers.add(pointer as usize) };
+        let to = at(operation.to);
         let [a, b, c, d] = operation.from;
-        // SAFETY (for the blocks below): rows are disjoint or the same, so that chunk by chunk, with operands read before the
-        // result is written, an operation may write a row that it reads.
+        // SAFETY (for the blocks below): rows are disjoint or the same, and operands are read, chunk by chunk, before the
+        // result is written; so an operation may write a row that it reads.
         match operation.kind {
-            Kind::Binary(Binary::Multiply) => unsafe {
-                pairs::<C>(n_chunks, row(operation.to), row(a), row(b), |x, y| x * y)
-            },
-            Kind::Binary(Binary::Add) => unsafe {
-                pairs::<C>(n_chunks, row(operation.to), row(a), row(b), |x, y| x + y)
-            },
-            Kind::Binary(Binary::Subtract) => unsafe {
-                pairs::<C>(n_chunks, row(operation.to), row(a), row(b), |x, y| x - y)
-            },
+            Kind::Multiply => unsafe { pairs::<K, C>(to, at(a), at(b), |x, y| x * y) },
             Kind::MultiplyAdd => unsafe {
-                let (to, a, b, c) = (row(operation.to), row(a), row(b), row(c));
-                for chunk in 0..n_chunks {
+                let (a, b, c) = (at(a), at(b), at(c));
+                for chunk in 0..K / C {
                     let (x, y, z) = (read::<C>(a, chunk), read::<C>(b, chunk), read::<C>(c, chunk));
                     write::<C>(to, chunk, std::array::from_fn(|lane| x[lane] * y[lane] + z[lane]));
                 }
             },
-            Kind::Unary(kind) => unsafe { unary::<C>(kind, n_chunks, row(operation.to), row(a)) },
-            Kind::Binary(kind) => unsafe { binary::<C>(kind, n_chunks, row(operation.to), row(a), row(b)) },
-            Kind::Copy => unsafe { singles::<C>(n_chunks, row(operation.to), row(a), |x| x) },
-            Kind::Fill(value) => unsafe { fill::<C>(n_chunks, row(operation.to), value) },
-            Kind::Number => unsafe {
-                let value = *values.get_unchecked(a.cursor as usize) as f64;
-                fill::<C>(n_chunks, row(operation.to), value);
+            Kind::Add => unsafe { pairs::<K, C>(to, at(a), at(b), |x, y| x + y) },
+            Kind::Subtract => unsafe { pairs::<K, C>(to, at(a), at(b), |x, y| x - y) },
+            Kind::Reciprocal => unsafe { singles::<K, C>(to, at(a), |x| 1.0 / x) },
+            Kind::Negate => unsafe { singles::<K, C>(to, at(a), |x| -x) },
+            Kind::SquareRoot => unsafe { singles::<K, C>(to, at(a), f64::sqrt) },
+            Kind::Copy => unsafe { singles::<K, C>(to, at(a), |x| x) },
+            Kind::Fill => unsafe { fill::<K, C>(to, *code.numbers.get_unchecked(operation.extra as usize)) },
+            Kind::Number => unsafe { fill::<K, C>(to, *state.places.get_unchecked(operation.extra as usize) as f64) },
+            Kind::Table => unsafe {
+                let number = operation.extra as usize;
+                let table = code.places.get_unchecked(number).unwrap_or(0) as usize;
+                let place = *state.places.get_unchecked(number) as usize;
+                fill::<K, C>(to, *program.tables.get_unchecked(table).get_unchecked(place));
             },
-            Kind::Table(table) => unsafe {
-                let place = *values.get_unchecked(a.cursor as usize) as usize;
-                let value = *program.tables.get_unchecked(table as usize).get_unchecked(place);
-                fill::<C>(n_chunks, row(operation.to), value);
+            Kind::Unary => unsafe { unary::<K, C>(Unary::ALL[operation.extra as usize], to, at(a)) },
+            Kind::Binary => unsafe { binary::<K, C>(Binary::ALL[operation.extra as usize], to, at(a), at(b)) },
+            Kind::Select => unsafe {
+                select::<K, C>(Relation::ALL[operation.extra as usize], to, [at(a), at(b), at(c), at(d)]);
             },
-            Kind::Select(relation) => unsafe {
-                let rows = [a, b, c, d].map(row);
-                select::<C>(relation, n_chunks, row(operation.to), rows);
-            },
-            Kind::Begin(number) => {
-                let scope = &code.loops[number as usize];
+            Kind::Begin => {
+                let scope = &code.loops[operation.extra as usize];
                 let first = scope.first.at(&state.counters, &program.lookups);
                 let last = scope.last.at(&state.counters, &program.lookups);
                 if first > last {
@@ -179,50 +184,54 @@ unsafe fn interpret<const C: usize>(
                 let (start, end) = if scope.descending { (last, first) } else { (first, last) };
                 state.counters[scope.depth] = start;
                 state.ends[scope.depth] = end;
-                enter(&scope.cursors, &state.counters, &program.lookups, &mut state.forms, &mut state.values);
+                for cursor in &scope.cursors {
+                    set::<K>(cursor, memory, state, &program.lookups);
+                }
             }
-            Kind::End(number) => {
-                let scope = &code.loops[number as usize];
-                if state.counters[scope.depth] != state.ends[scope.depth] {
+            Kind::End => {
+                let scope = &code.loops[operation.extra as usize];
+                let counter = &mut state.counters[scope.depth];
+                if *counter != state.ends[scope.depth] {
                     let way = if scope.descending { -1 } else { 1 };
-                    state.counters[scope.depth] += way;
-                    advance(&scope.cursors, way, &program.lookups, &mut state.forms, &mut state.values);
+                    *counter += way;
+                    for cursor in &scope.cursors {
+                        match (cursor.stride, cursor.moves) {
+                            (Some(stride), Moves::Pointer(pointer, _)) => {
+                                let pointer = &mut state.pointers[pointer as usize];
+                                *pointer = pointer.wrapping_offset((way * stride) as isize * K as isize);
+                            }
+                            (Some(stride), Moves::Place(number)) => state.places[number as usize] += way * stride,
+                            (None, _) => set::<K>(cursor, memory, state, &program.lookups),
+                        }
+                    }
                     place = scope.body as usize;
                 }
             }
-            Kind::Unless(number, otherwise) => {
-                if !code.conditions[number as usize].holds(&state.counters, &program.lookups) {
-                    place = otherwise as usize;
+            Kind::Unless => {
+                let branch = &code.branches[operation.extra as usize];
+                if !branch.condition.holds(&state.counters, &program.lookups) {
+                    place = branch.otherwise as usize;
                 }
             }
-            Kind::Jump(to) => place = to as usize,
+            Kind::Jump => place = operation.extra as usize,
         }
     }
 }
 
-/// Works the cursors of a loop out at its beginning.
+/// Works a cursor out. One whose place is guarded by a condition that does not hold may stand outside its buffer: it is
+/// then not used.
 #[inline(always)]
-fn enter(cursors: &[Cursor], counters: &[i64], lookups: &[Vec<i64>], forms: &mut [i64], values: &mut [i64]) {
-    for cursor in cursors {
-        let form = cursor.index.affine().at(counters);
-        forms[cursor.number as usize] = form;
-        values[cursor.number as usize] = match &cursor.index {
-            Index::Affine(_) => form,
-            Index::Lookup { table, .. } => lookups[*table as usize].get(form as usize).copied().unwrap_or(0),
-        };
-    }
-}
-
-/// Moves the cursors of a loop on by a turn.
-#[inline(always)]
-fn advance(cursors: &[Cursor], way: i64, lookups: &[Vec<i64>], forms: &mut [i64], values: &mut [i64]) {
-    for cursor in cursors {
-        let form = forms[cursor.number as usize] + way * cursor.stride;
-        forms[cursor.number as usize] = form;
-        values[cursor.number as usize] = match &cursor.index {
-            Index::Affine(_) => form,
-            Index::Lookup { table, .. } => lookups[*table as usize].get(form as usize).copied().unwrap_or(0),
-        };
+fn set<const K: usize>(cursor: &Cursor, memory: *mut f64, state: &mut State, lookups: &[Vec<i64>]) {
+    let form = cursor.index.affine().at(&state.counters);
+    let value = match &cursor.index {
+        Index::Affine(_) => form,
+        Index::Lookup { table, .. } => lookups[*table as usize].get(form as usize).copied().unwrap_or(0),
+    };
+    match cursor.moves {
+        Moves::Pointer(pointer, row) => {
+            state.pointers[pointer as usize] = memory.wrapping_offset((row as i64 + value) as isize * K as isize);
+        }
+        Moves::Place(number) => state.places[number as usize] = value,
     }
 }
 
@@ -245,8 +254,8 @@ unsafe fn write<const C: usize>(row: *mut f64, chunk: usize, values: [f64; C]) {
 /// # Safety
 /// The row must have the chunks.
 #[inline(always)]
-unsafe fn fill<const C: usize>(n_chunks: usize, to: *mut f64, value: f64) {
-    for chunk in 0..n_chunks {
+unsafe fn fill<const K: usize, const C: usize>(to: *mut f64, value: f64) {
+    for chunk in 0..K / C {
         // SAFETY: by contract.
         unsafe { write::<C>(to, chunk, [value; C]) }
     }
@@ -255,8 +264,8 @@ unsafe fn fill<const C: usize>(n_chunks: usize, to: *mut f64, value: f64) {
 /// # Safety
 /// The rows must have the chunks.
 #[inline(always)]
-unsafe fn singles<const C: usize>(n_chunks: usize, to: *mut f64, a: *const f64, f: impl Fn(f64) -> f64) {
-    for chunk in 0..n_chunks {
+unsafe fn singles<const K: usize, const C: usize>(to: *mut f64, a: *const f64, f: impl Fn(f64) -> f64) {
+    for chunk in 0..K / C {
         // SAFETY: by contract.
         unsafe {
             let x = read::<C>(a, chunk);
@@ -272,14 +281,13 @@ unsafe fn singles<const C: usize>(n_chunks: usize, to: *mut f64, a: *const f64, 
 /// # Safety
 /// The rows must have the chunks.
 #[inline(always)]
-unsafe fn pairs<const C: usize>(
-    n_chunks: usize,
+unsafe fn pairs<const K: usize, const C: usize>(
     to: *mut f64,
     a: *const f64,
     b: *const f64,
     f: impl Fn(f64, f64) -> f64,
 ) {
-    for chunk in 0..n_chunks {
+    for chunk in 0..K / C {
         // SAFETY: by contract.
         unsafe {
             let (x, y) = (read::<C>(a, chunk), read::<C>(b, chunk));
@@ -297,14 +305,13 @@ unsafe fn pairs<const C: usize>(
 /// # Safety
 /// The rows must have the chunks.
 #[inline(always)]
-unsafe fn angles<const C: usize>(
-    n_chunks: usize,
+unsafe fn angles<const K: usize, const C: usize>(
     to: *mut f64,
     a: *const f64,
     near: impl Fn(f64) -> f64,
     any: impl Fn(f64) -> f64,
 ) {
-    for chunk in 0..n_chunks {
+    for chunk in 0..K / C {
         // SAFETY: by contract.
         unsafe {
             let x = read::<C>(a, chunk);
@@ -326,15 +333,15 @@ unsafe fn angles<const C: usize>(
 /// # Safety
 /// The rows must have the chunks.
 #[inline(always)]
-unsafe fn unary<const C: usize>(kind: Unary, n_chunks: usize, to: *mut f64, a: *const f64) {
+unsafe fn unary<const K: usize, const C: usize>(kind: Unary, to: *mut f64, a: *const f64) {
     macro_rules! each {
         ($($name:ident),*) => {
             match kind {
                 // SAFETY: by contract, here and below.
-                Unary::Sine => unsafe { angles::<C>(n_chunks, to, a, functions::moderate_sine, functions::sine) },
-                Unary::Cosine => unsafe { angles::<C>(n_chunks, to, a, functions::moderate_cosine, functions::cosine) },
-                Unary::Tangent => unsafe { angles::<C>(n_chunks, to, a, functions::moderate_tangent, functions::tangent) },
-                $(Unary::$name => unsafe { singles::<C>(n_chunks, to, a, |x| functions::unary(Unary::$name, x)) },)*
+                Unary::Sine => unsafe { angles::<K, C>( to, a, functions::moderate_sine, functions::sine) },
+                Unary::Cosine => unsafe { angles::<K, C>( to, a, functions::moderate_cosine, functions::cosine) },
+                Unary::Tangent => unsafe { angles::<K, C>( to, a, functions::moderate_tangent, functions::tangent) },
+                $(Unary::$name => unsafe { singles::<K, C>( to, a, |x| functions::unary(Unary::$name, x)) },)*
             }
         };
     }
@@ -361,12 +368,12 @@ unsafe fn unary<const C: usize>(kind: Unary, n_chunks: usize, to: *mut f64, a: *
 /// # Safety
 /// The rows must have the chunks.
 #[inline(always)]
-unsafe fn binary<const C: usize>(kind: Binary, n_chunks: usize, to: *mut f64, a: *const f64, b: *const f64) {
+unsafe fn binary<const K: usize, const C: usize>(kind: Binary, to: *mut f64, a: *const f64, b: *const f64) {
     macro_rules! each {
         ($($name:ident),*) => {
             match kind {
                 // SAFETY: by contract.
-                $(Binary::$name => unsafe { pairs::<C>(n_chunks, to, a, b, |x, y| functions::binary(Binary::$name, x, y)) },)*
+                $(Binary::$name => unsafe { pairs::<K, C>( to, a, b, |x, y| functions::binary(Binary::$name, x, y)) },)*
             }
         };
     }
@@ -376,11 +383,11 @@ unsafe fn binary<const C: usize>(kind: Binary, n_chunks: usize, to: *mut f64, a:
 /// # Safety
 /// The rows must have the chunks.
 #[inline(always)]
-unsafe fn select<const C: usize>(relation: Relation, n_chunks: usize, to: *mut f64, rows: [*mut f64; 4]) {
+unsafe fn select<const K: usize, const C: usize>(relation: Relation, to: *mut f64, rows: [*mut f64; 4]) {
     macro_rules! each {
         ($($name:ident),*) => {
             match relation {
-                $(Relation::$name => for chunk in 0..n_chunks {
+                $(Relation::$name => for chunk in 0..K / C {
                     // SAFETY: by contract.
                     unsafe {
                         let [x, y, then, otherwise] = rows.map(|row| read::<C>(row, chunk));
