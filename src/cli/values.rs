@@ -24,7 +24,7 @@ pub(crate) fn evaluations(text: &str) -> Result<u64, String> {
         return if (1..=10u64.pow(18)).contains(&count) { Ok(count) } else { Err(refused()) };
     }
     let number: f64 = digits.parse().map_err(|_| refused())?;
-    if 1.0 <= number && number <= 1e18 && number.fract() == 0.0 { Ok(number as u64) } else { Err(refused()) }
+    if (1.0..=1e18).contains(&number) && number.fract() == 0.0 { Ok(number as u64) } else { Err(refused()) }
 }
 
 /// Reads a time: `90s`, `15m`, `8h`, `1h30m`, `2d`.

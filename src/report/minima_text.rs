@@ -132,12 +132,12 @@ fn counted(count: u64, one: &str, many: &str) -> String {
     format!("{} {}", grouped(count), if count == 1 { one } else { many })
 }
 
-/// A count with thin groups of three: `1 234 567`.
+/// A count in groups of three: `1 234 567`.
 fn grouped(count: u64) -> String {
     let digits = count.to_string();
     let mut out = String::new();
     for (place, digit) in digits.chars().enumerate() {
-        if place > 0 && (digits.len() - place) % 3 == 0 {
+        if place > 0 && (digits.len() - place).is_multiple_of(3) {
             out.push(' ');
         }
         out.push(digit);

@@ -1,5 +1,7 @@
 //! The integration tests, in reading order.
 
+#![allow(clippy::unwrap_used, reason = "a test's helpers may fail like a test")]
+
 /// A fresh folder and the real program.
 mod folder;
 
