@@ -215,6 +215,49 @@ impl Problem {
         batches * MAX_LANES
     }
 
+    /// Points from a CSV table (see [`run::read_points`]); `name` is what messages call it.
+    ///
+    /// # Errors
+    /// A [`Failure`] that names the row and column of the first thing wrong.
+    pub fn points_from_csv(&self, name: &str, table: &str) -> Result<Vec<Vec<f64>>, Failure> {
+        let refused = |error: run::PointsError| Failure::new(Blame::Input, format!("{name}: {error}"));
+        run::read_points(&self.landscape, table).map_err(refused)
+    }
+
+    /// The places of the minima of an earlier run, which must have the same families of unknowns.
+    ///
+    /// # Errors
+    /// A [`Failure`] that names the first family that is missing or of another size.
+    pub fn points_from_run(&self, name: &str, earlier: &report::MinimaFile) -> Result<Vec<Vec<f64>>, Failure> {
+        let refused = |cause: String| Failure::new(Blame::Input, format!("{name}: {cause}"));
+        let mut points = Vec::new();
+        for minimum in &earlier.minima {
+            let mut point = Vec::new();
+            for family in &self.landscape.unknowns {
+                let value = minimum.at.get(&family.name);
+                let value = value.ok_or_else(|| refused(format!("its minima have no unknown `{}`", family.name)))?;
+                // The whole shape is compared: six numbers of p[3, 2] are not those of p[2, 3].
+                let numbers = value.flat();
+                if numbers.len() != family.count || *value != nest(&numbers, &counts(&family.axes)) {
+                    return Err(refused(format!("`{}` has another shape in its minima", family.name)));
+                }
+                point.extend(numbers);
+            }
+            if minimum.at.len() != self.landscape.unknowns.len() {
+                return Err(refused("its minima have unknowns that the problem has not".to_string()));
+            }
+            for (slot, &value) in point.iter().enumerate() {
+                let bounds = &self.landscape.slots[slot];
+                if !(bounds.lower <= value && value <= bounds.upper) {
+                    let unknown = self.landscape.slot_name(slot);
+                    return Err(refused(format!("`{unknown}` = {value} lies outside its bounds")));
+                }
+            }
+            points.push(point);
+        }
+        Ok(points)
+    }
+
     fn nested(&self, at: &[f64]) -> Vec<(String, Nested)> {
         let families = self.landscape.unknowns.iter();
         families
@@ -275,6 +318,19 @@ mod tests {
         let text = "unknown x[3] in [-1, 2]\nminimise sum(i in 1..3: (x[i]^2 - 1)^2 + 0.1*x[i])";
         let facts = read("like.land", text, &[]).unwrap().check();
         assert!(facts.suggestions.contains(&"alike exchange x".to_string()), "{:?}", facts.suggestions);
+    }
+
+    #[test]
+    fn minima_of_an_earlier_run_become_points_if_they_fit() {
+        let earlier = report::read_minima_file(include_str!("../tests/data/edge/minima.json")).unwrap();
+        let points = |unknown: &str| {
+            let problem = read("p.land", &format!("unknown {unknown}\nminimise sum(x)^2"), &[]).unwrap();
+            problem.points_from_run("wells", &earlier).map_err(|failure| failure.to_string())
+        };
+        assert_eq!(points("x[2] in [-2, 2]"), Ok(vec![vec![-1.0, -1.0]]));
+        assert!(points("x[3] in [-2, 2]").unwrap_err().contains("another shape"));
+        assert!(points("x[1, 2] in [-2, 2]").unwrap_err().contains("another shape"));
+        assert!(points("x[2] in [0, 2]").unwrap_err().contains("`x[1]` = -1 lies outside"));
     }
 
     #[test]

@@ -99,6 +99,10 @@ pub fn check_text(facts: &CheckFacts) -> String {
     out.push_str(&format!("  cost       about {} operations a value{}\n", facts.work, speed.unwrap_or_default()));
     let gradient = &facts.gradient;
     out.push_str(&match &gradient.unknown {
+        // Zero would read as if nothing had been compared: differences can show no more than their own rounding.
+        Some(_) if gradient.worst == 0.0 => {
+            format!("  gradient   agrees with differences to their rounding at {} random points\n", gradient.points)
+        }
         Some(unknown) => format!(
             "  gradient   agrees with differences to {:.1e} at {} random points (worst in {unknown})\n",
             gradient.worst, gradient.points
