@@ -7,7 +7,7 @@
 //!
 //! The way: [`lower`] writes the value as a nest of loops; [`differentiate`] adds the gradient, [`tangent`] derivatives
 //! along a direction; [`simplify`] shares, folds and hoists, `dead` removes what is left over, [`mod@fuse`] joins products
-//! with sums, [`registers`] plans registers; [`mod@verify`] shows that the result is sound. [`reference`] interprets plainly
+//! with sums, [`registers`] plans registers; [`mod@verify`] shows that the result is sound. [`mod@reference`] interprets plainly
 //! over any number algebra, [`lanes`] fast.
 
 mod activity;

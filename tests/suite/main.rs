@@ -1,5 +1,7 @@
 //! The integration tests, in reading order.
 
+#![allow(clippy::unwrap_used, reason = "a test's helpers may fail like a test")]
+
 /// What the others share: problems from text, hunts, published tables.
 mod support;
 
@@ -11,3 +13,12 @@ mod kernel;
 
 /// Descents and confirmations on compiled landscapes.
 mod descents;
+
+/// A fresh folder and the real program.
+mod folder;
+
+/// Every module imports its own folder and lower floors only.
+mod floors;
+
+/// The commands: whole outputs, wrong input of every kind, exit statuses.
+mod commands;

@@ -1,0 +1,22 @@
+//! What is shown: terminal tables, JSON and CSV. Owns the serialised types.
+//!
+//! Enters: facts. Leaves: text. Promised: numbers in files read back to the same bits; tables stand lowest first; text
+//! from the problem reaches a terminal without control characters. Deliberately absent: science (it computes nothing
+//! but differences to the lowest), files, clocks, and the word "global", which only a certificate could say.
+
+mod check;
+mod minima_csv;
+mod minima_file;
+mod minima_text;
+mod nested;
+mod table;
+
+pub use check::{BrokenFacts, CheckFacts, FamilyFacts, GradientFacts, check_json, check_text};
+pub use minima_csv::minima_csv;
+pub use minima_file::{
+    Coverage, FileError, First, Format, MinimaFile, Minimum, NearTwin, Problem, SurveyCounts, Tolerances, Troubles,
+    read_minima_file, write_minima_file,
+};
+pub use minima_text::minima_text;
+pub use nested::{Nested, nest};
+pub use table::{Align, Table, plain};
