@@ -27,6 +27,7 @@ pub mod ledger;
 pub mod numbers;
 pub mod report;
 pub mod run;
+pub mod search;
 
 use std::fmt;
 use std::sync::Arc;

@@ -4,7 +4,9 @@ use std::sync::Arc;
 
 use rayon::ThreadPoolBuilder;
 
+use crate::base::random::{Purpose, stream};
 use crate::descent::Region;
+use crate::evaluate::Evaluator;
 use crate::kernel::Kernel;
 use crate::landscape::Landscape;
 use crate::ledger::Identity;
@@ -12,6 +14,7 @@ use crate::ledger::Identity;
 use super::crew::{Gathered, Gathering, Queue};
 use super::outcome::{Ending, HuntError, Observer, Outcome, RoundReport, Verdict};
 use super::settings::Settings;
+use super::start;
 use super::state::Hunt;
 use super::structure::Structure;
 use super::task::{Task, TaskResult};
@@ -53,7 +56,7 @@ pub fn hunt(
         .map_err(|error| HuntError::Threads(error.to_string()))?;
     let queue = Queue::new(threads);
     let (sender, mut gathering) = Gathering::new();
-    let mut state = Hunt::new(settings.clone(), shop.structure.clone(), shop.identity.clone());
+    let mut state = Hunt::new(settings.clone(), shop.structure.clone(), shop.identity.clone(), value_scale(&shop));
     let mut ended = Err(HuntError::Worker);
     pool.in_place_scope(|scope| {
         for _ in 0..threads {
@@ -77,6 +80,20 @@ pub fn hunt(
         ending,
         ledger: state.into_ledger(),
     })
+}
+
+/// Points at which the size of ordinary values is read.
+const SCALE_POINTS: u64 = 32;
+
+/// The size of ordinary values: the least of a few random points, since walls make others huge.
+fn value_scale(shop: &Workshop) -> f64 {
+    let mut evaluator = Evaluator::new(&shop.kernel);
+    let sizes = (0..SCALE_POINTS).filter_map(|number| {
+        let at = start::uniform(&shop.structure, &mut stream(shop.seed, 0, number, Purpose::Check));
+        let value = evaluator.value_and_gradient(&at).0;
+        (value.is_finite() && value != 0.0).then_some(value.abs())
+    });
+    sizes.fold(f64::INFINITY, f64::min)
 }
 
 struct Crew<'a> {

@@ -154,13 +154,6 @@ pub struct Settings {
 
 impl Default for Settings {
     fn default() -> Self {
-        Settings {
-            seed: 1,
-            mix: Mix::default(),
-            survey: 0.2,
-            max_evaluations: None,
-            target: None,
-            given: Vec::new(),
-        }
+        Settings { seed: 1, mix: Mix::default(), survey: 0.2, max_evaluations: None, target: None, given: Vec::new() }
     }
 }

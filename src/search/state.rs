@@ -44,9 +44,9 @@ pub struct Hunt {
 
 impl Hunt {
     /// A hunt that has not begun.
-    pub fn new(settings: Settings, structure: Arc<Structure>, identity: Arc<Identity>) -> Self {
+    pub fn new(settings: Settings, structure: Arc<Structure>, identity: Arc<Identity>, value_scale: f64) -> Self {
         Hunt {
-            ledger: Ledger::new(identity),
+            ledger: Ledger::new(identity, value_scale),
             schedule: Schedule::new(&settings.mix, settings.survey),
             chains: Chains::new(&structure),
             troubles: Troubles::default(),
@@ -117,7 +117,8 @@ impl Hunt {
             match result.finding {
                 Finding::Met { heuristic, mark, candidate } => {
                     self.schedule.end(heuristic, result.evaluations);
-                    let meeting = Meeting { heuristic: heuristic.number(), round, task: number, evaluation: self.evaluations() };
+                    let meeting =
+                        Meeting { heuristic: heuristic.number(), round, task: number, evaluation: self.evaluations() };
                     let (value, at) = (candidate.value, candidate.at.clone());
                     let met = self.ledger.meet(candidate, meeting);
                     if met.new {

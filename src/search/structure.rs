@@ -114,7 +114,8 @@ fn kinds_of(rows: &[Vec<usize>], exchanges: &[Vec<Vec<usize>>]) -> (Vec<usize>, 
     let kinds = rows
         .iter()
         .map(|row| {
-            let group = exchanges.iter().position(|group| group.iter().any(|other| row.iter().all(|s| other.contains(s))));
+            let group =
+                exchanges.iter().position(|group| group.iter().any(|other| row.iter().all(|s| other.contains(s))));
             match group {
                 Some(group) => *group_kinds[group].get_or_insert_with(&mut new_kind),
                 None => new_kind(),

@@ -14,6 +14,9 @@ mod kernel;
 /// Descents and confirmations on compiled landscapes.
 mod descents;
 
+/// The main job against published values.
+mod published;
+
 /// A fresh folder and the real program.
 mod folder;
 

@@ -64,8 +64,8 @@ fn charges_on_a_sphere() {
              unknown p[n, 3] in [-1.6, 1.6]\n\
              alike rotate p, mirror p, exchange p\n\
              let u[i in 1..n, k in 1..3] = p[i,k]/norm(p[i])\n\
-             minimise sum(i in 1..n, j in i+1..n: 1/sqrt(sum(k in 1..3: (u[i,k] - u[j,k])^2)))\n\
-                 + sum(i in 1..n: (dot(p[i], p[i]) - 1)^2)\n"
+             minimise sum(i in 1..n, j in i+1..n: 1/sqrt(sum(k in 1..3: (u[i,k] - u[j,k])^2))) +\n\
+                 sum(i in 1..n: (dot(p[i], p[i]) - 1)^2)\n"
         );
         let settings = Settings { target: Some(energy + 1e-8), ..evaluations(1_000_000) };
         let found = hunt(&problem, &settings);

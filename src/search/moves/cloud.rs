@@ -51,8 +51,7 @@ pub fn swap(structure: &Structure, at: &mut [f64], rng: &mut impl Rng) {
     let n_swaps = rng.random_range(1..=3);
     for _ in 0..n_swaps {
         let first = rng.random_range(0..cloud.rows.len());
-        let others: Vec<usize> =
-            (0..cloud.rows.len()).filter(|&row| cloud.kinds[row] != cloud.kinds[first]).collect();
+        let others: Vec<usize> = (0..cloud.rows.len()).filter(|&row| cloud.kinds[row] != cloud.kinds[first]).collect();
         let second = others[rng.random_range(0..others.len())];
         for k in 0..cloud.dimensions {
             at.swap(cloud.rows[first][k], cloud.rows[second][k]);
