@@ -161,17 +161,7 @@ impl Problem {
         let landscape = &self.landscape;
         let mut evaluator = Evaluator::new(&self.kernel);
         let gradient = check_gradient(landscape, &mut evaluator, CHECK_SEED, GRADIENT_POINTS);
-        let broken = test_promises(landscape, &mut evaluator, CHECK_SEED);
-        let broken: Vec<BrokenFacts> = broken
-            .into_iter()
-            .map(|broken| BrokenFacts {
-                promise: self.promise_words(broken.symmetry),
-                at: self.nested(&broken.at),
-                value: Some(broken.value).filter(|value| value.is_finite()),
-                image: self.nested(&broken.image),
-                image_value: Some(broken.image_value).filter(|value| value.is_finite()),
-            })
-            .collect();
+        let broken = self.broken_promises();
         let suggestions = suggest_symmetries(landscape, &mut evaluator, CHECK_SEED);
         CheckFacts {
             name: self.name.clone(),
@@ -195,6 +185,75 @@ impl Problem {
             broken,
             suggestions: suggestions.into_iter().map(|suggestion| suggestion.statement).collect(),
             warnings: self.warnings.clone(),
+        }
+    }
+
+    /// The promises that do not hold, each with two points that it calls the same and their values.
+    pub fn broken_promises(&self) -> Vec<BrokenFacts> {
+        let broken = test_promises(&self.landscape, &mut Evaluator::new(&self.kernel), CHECK_SEED);
+        let facts = broken.into_iter().map(|broken| BrokenFacts {
+            promise: self.promise_words(broken.symmetry),
+            at: self.nested(&broken.at),
+            value: Some(broken.value).filter(|value| value.is_finite()),
+            image: self.nested(&broken.image),
+            image_value: Some(broken.image_value).filter(|value| value.is_finite()),
+        });
+        facts.collect()
+    }
+
+    /// Hunts. `threads` changes how long it takes and nothing else; the observer sees every round and may end the hunt.
+    ///
+    /// ```
+    /// use thalweg::search::{Observer, RoundReport, Settings, Verdict};
+    ///
+    /// struct Patient;
+    /// impl Observer for Patient {
+    ///     fn round(&mut self, _: &RoundReport<'_>) -> Verdict {
+    ///         Verdict::Continue
+    ///     }
+    /// }
+    ///
+    /// let problem = thalweg::read("wells.land", "unknown x[2] in [-2, 2]\nminimise (x[1]^2 - 1)^2 + (x[2]^2 - 1)^2", &[])?;
+    /// let settings = Settings { max_evaluations: Some(4000), ..Settings::default() };
+    /// let outcome = problem.hunt(&settings, 2, &mut Patient)?;
+    /// assert_eq!(outcome.ledger.len(), 4);
+    /// # Ok::<(), thalweg::Failure>(())
+    /// ```
+    ///
+    /// # Errors
+    /// A [`Failure`] where threads cannot be had, or a worker failed.
+    pub fn hunt(
+        &self,
+        settings: &search::Settings,
+        threads: usize,
+        observer: &mut dyn search::Observer,
+    ) -> Result<search::Outcome, Failure> {
+        search::hunt(&self.landscape, &self.kernel, settings, threads, observer).map_err(|error| {
+            let blame = match error {
+                search::HuntError::Threads(_) => Blame::Outside,
+                search::HuntError::Worker => Blame::Program,
+            };
+            Failure::new(blame, error.to_string())
+        })
+    }
+
+    /// The file of minima for a state of a hunt.
+    pub fn minima_file(&self, facts: &report::HuntFacts, view: &report::LedgerView<'_>) -> report::MinimaFile {
+        let mut evaluator = Evaluator::new(&self.kernel);
+        report::ledger_file(&self.landscape, facts, view, |at| evaluator.shown(at))
+    }
+
+    /// How files name the problem. `givens` are those set on the command line, `text` is that of the file.
+    pub fn described(&self, givens: &[(String, f64)], text: &[u8]) -> report::Problem {
+        use sha2::Digest;
+        let digest = sha2::Sha256::digest(text);
+        let name = self.name.rsplit(['/', '\\']).next().unwrap_or(&self.name);
+        report::Problem {
+            name: name.to_string(),
+            title: self.landscape.title.clone(),
+            sense: if self.landscape.maximise { "maximise" } else { "minimise" }.to_string(),
+            givens: givens.iter().cloned().collect(),
+            digest: digest.iter().map(|byte| format!("{byte:02x}")).collect(),
         }
     }
 

@@ -7,7 +7,7 @@ use clap::{Parser, Subcommand};
 use thalweg::{Blame, Failure};
 
 use super::screen::{say, warn};
-use super::{check, minima};
+use super::{check, hunt, minima};
 
 /// Hunts the lowest point of a rugged landscape, and keeps every distinct minimum that it meets.
 #[derive(Parser)]
@@ -15,7 +15,7 @@ use super::{check, minima};
     name = "thalweg",
     version,
     disable_help_subcommand = true,
-    after_help = "Usual calls:\n  thalweg check pore.land        is the problem sound, and what does it cost?\n  thalweg minima results/pore    the distinct minima of a run"
+    after_help = "Usual calls:\n  thalweg check pore.land               is the problem sound, and what does it cost?\n  thalweg hunt pore.land --for 8h       search overnight on all cores\n  thalweg minima results/pore           the distinct minima of a run"
 )]
 struct Typed {
     #[command(subcommand)]
@@ -26,6 +26,8 @@ struct Typed {
 enum Command {
     /// Reads a problem, tests its promises and gradients, shows its size and cost
     Check(check::Check),
+    /// Searches until its budget is spent, and leaves a run folder
+    Hunt(hunt::Hunt),
     /// Shows the distinct minima of a run
     Minima(minima::Minima),
 }
@@ -61,6 +63,7 @@ fn run() -> ExitCode {
     };
     let end = match typed.command {
         Command::Check(check) => check.run(),
+        Command::Hunt(hunt) => hunt.run(),
         Command::Minima(minima) => minima.run(),
     };
     match end.and_then(|end| say(&end.text).map(|()| end.status)) {

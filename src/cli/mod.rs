@@ -2,6 +2,8 @@
 
 mod check;
 mod command;
+mod display;
+mod hunt;
 mod minima;
 mod screen;
 mod source;

@@ -16,7 +16,6 @@ pub(crate) fn given(text: &str) -> Result<(String, f64), String> {
 }
 
 /// Reads a number of evaluations: `1e6`, `2.5e7`, `1000000`, `1_000_000`.
-#[cfg_attr(not(test), expect(dead_code, reason = "`hunt` waits for the ledger"))]
 pub(crate) fn evaluations(text: &str) -> Result<u64, String> {
     let refused = || format!("`{text}` is not a whole number of evaluations, from 1 to 1e18; write 1e6 or 1_000_000");
     let digits = text.trim().replace('_', "");
@@ -28,7 +27,6 @@ pub(crate) fn evaluations(text: &str) -> Result<u64, String> {
 }
 
 /// Reads a time: `90s`, `15m`, `8h`, `1h30m`, `2d`.
-#[cfg_attr(not(test), expect(dead_code, reason = "`hunt` waits for the ledger"))]
 pub(crate) fn time(text: &str) -> Result<std::time::Duration, String> {
     let refused = || format!("`{text}` is not a time; write 90s, 15m, 8h, 1h30m or 2d");
     let mut rest = text.trim();
@@ -57,7 +55,6 @@ pub(crate) fn time(text: &str) -> Result<std::time::Duration, String> {
 }
 
 /// Reads `target=-44.3268`; the other conditions of ending are not there yet.
-#[cfg_attr(not(test), expect(dead_code, reason = "`hunt` waits for the ledger"))]
 pub(crate) fn target(text: &str) -> Result<f64, String> {
     let (name, value) = text.split_once('=').unwrap_or((text, ""));
     match (name.trim(), value.trim().parse::<f64>()) {
@@ -66,6 +63,13 @@ pub(crate) fn target(text: &str) -> Result<f64, String> {
         (name @ ("coverage" | "quiet"), _) => Err(format!("`{name}` is not available yet; write target=-44.3268")),
         (name, _) => Err(format!("there is no condition `{name}`; write target=-44.3268")),
     }
+}
+
+/// Reads a share from 0 to 1.
+pub(crate) fn share(text: &str) -> Result<f64, String> {
+    let refused = || format!("`{text}` is not a share; write a number from 0 to 1, such as 0.2");
+    let number: f64 = text.trim().parse().map_err(|_| refused())?;
+    if (0.0..=1.0).contains(&number) { Ok(number) } else { Err(refused()) }
 }
 
 #[cfg(test)]

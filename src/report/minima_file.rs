@@ -30,6 +30,8 @@ pub struct MinimaFile {
     pub coverage: Coverage,
     /// The distinct minima, lowest first; of a `maximise` problem, highest first.
     pub minima: Vec<Minimum>,
+    /// Entries that were met and not confirmed yet; they are not among the minima.
+    pub unconfirmed: u64,
     /// Pairs judged distinct, but within ten times a tolerance.
     pub near_twins: Vec<NearTwin>,
     /// Within what two minima are called the same.
@@ -94,7 +96,7 @@ pub struct Minimum {
     pub value: f64,
     /// For each unknown family its value: a number, or arrays nested by index.
     pub at: BTreeMap<String, Nested>,
-    /// `interior`, `bound`, `constrained` or `kinked`.
+    /// `interior`, `bound`, `flat` (a stiffness of 0 beyond the declared motions) or `kinked`.
     pub kind: String,
     /// The eigenvalues of the second derivatives, ascending; those of declared rigid motions are exactly 0.
     pub stiffness: Vec<f64>,
@@ -274,6 +276,7 @@ pub(super) mod tests {
             evaluations: 12_000,
             coverage: Coverage { survey: SurveyCounts { descents: 40, distinct: 2, met_once: 1 } },
             minima: vec![minimum(-1.0, 1.0 / 3.0, &[("hop", 5), ("survey", 39)]), minimum(-0.5, 2.0, &[("survey", 1)])],
+            unconfirmed: 0,
             near_twins: vec![NearTwin { first: 1, second: 2, value_difference: 0.5, deviation: 0.25 }],
             tolerances: Tolerances { value: 1e-9, place: 1e-6 },
             troubles: Troubles { outside: 12, ..Troubles::default() },
@@ -296,6 +299,7 @@ pub(super) mod tests {
             pub(super) evaluations: u64,
             pub(super) coverage: BTreeMap<String, Survey>,
             pub(super) minima: Vec<Minimum>,
+            pub(super) unconfirmed: u64,
             pub(super) near_twins: Vec<BTreeMap<String, f64>>,
             pub(super) tolerances: BTreeMap<String, f64>,
             pub(super) troubles: BTreeMap<String, Value>,
@@ -365,7 +369,7 @@ pub(super) mod tests {
         assert!(lowest.at["p"].is_array() && lowest.shows["width"].is_number());
         assert_eq!((file.near_twins[0]["first"], file.near_twins[0]["deviation"]), (1.0, 0.25));
         assert_eq!((file.tolerances["value"], file.tolerances["place"]), (1e-9, 1e-6));
-        assert_eq!(file.troubles["outside"], 12);
+        assert_eq!((file.troubles["outside"].as_u64(), file.unconfirmed), (Some(12), 0));
     }
 
     #[test]

@@ -31,6 +31,9 @@ pub fn minima_text(file: &MinimaFile, most: usize, width: usize) -> String {
     if file.minima.len() > most {
         out.push_str(&format!("  … and {} more\n", file.minima.len() - most));
     }
+    if file.unconfirmed > 0 {
+        out.push_str(&format!("  {} more were met and not confirmed\n", grouped(file.unconfirmed)));
+    }
     out.push('\n');
     out.push_str(&survey_text(file));
     out.push_str(&twins_text(file));

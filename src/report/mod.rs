@@ -5,13 +5,16 @@
 //! but differences to the lowest), files, clocks, and the word "global", which only a certificate could say.
 
 mod check;
+mod ledger_file;
 mod minima_csv;
 mod minima_file;
 mod minima_text;
 mod nested;
+mod run_file;
 mod table;
 
 pub use check::{BrokenFacts, CheckFacts, FamilyFacts, GradientFacts, check_json, check_text};
+pub use ledger_file::{HuntFacts, LedgerView, ledger_file};
 pub use minima_csv::minima_csv;
 pub use minima_file::{
     Coverage, FileError, First, Format, MinimaFile, Minimum, NearTwin, Problem, SurveyCounts, Tolerances, Troubles,
@@ -19,4 +22,5 @@ pub use minima_file::{
 };
 pub use minima_text::minima_text;
 pub use nested::{Nested, nest};
+pub use run_file::{JournalEntry, RunEnd, RunFile, RunMachine, RunSettings, run_format};
 pub use table::{Align, Table, plain};

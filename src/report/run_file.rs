@@ -1,0 +1,100 @@
+//! `run.json`: what was asked of a run, and how it ended; and the entries of its journal.
+
+use std::collections::BTreeMap;
+
+use serde::{Deserialize, Serialize};
+
+use super::minima_file::{Format, Problem};
+
+/// The whole file: one object, written at the beginning and again at the end.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct RunFile {
+    /// `thalweg run`, version 1.
+    pub format: Format,
+    /// The version of the program.
+    pub program: String,
+    /// The problem.
+    pub problem: Problem,
+    /// The text of the problem.
+    pub text: String,
+    /// What decides the bits.
+    pub settings: RunSettings,
+    /// What only decides how long it takes.
+    pub machine: RunMachine,
+    /// How it ended; missing while it runs, or when it was killed.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub end: Option<RunEnd>,
+}
+
+/// The settings of a run.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct RunSettings {
+    /// The seed.
+    pub seed: u64,
+    /// The heuristics with their shares of what the survey leaves.
+    pub mix: BTreeMap<String, f64>,
+    /// The share of evaluations that goes to the survey.
+    pub survey: f64,
+    /// The evaluations allowed.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub evaluations: Option<u64>,
+    /// The seconds allowed.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub seconds: Option<u64>,
+    /// The value that ends it, of the objective as written.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub target: Option<f64>,
+    /// Points that the user gave.
+    pub given_points: usize,
+}
+
+/// Where it ran.
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
+pub struct RunMachine {
+    /// Threads.
+    pub threads: usize,
+    /// The build of the interpreter.
+    pub build: String,
+}
+
+/// The end of a run.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct RunEnd {
+    /// `evaluations`, `target`, `time`, `interrupted` or `failed`.
+    pub reason: String,
+    /// Rounds merged.
+    pub rounds: u64,
+    /// Evaluations spent.
+    pub evaluations: u64,
+    /// Evaluations by heuristic.
+    pub by_heuristic: BTreeMap<String, u64>,
+    /// Evaluations spent on confirming minima.
+    pub confirming: u64,
+    /// Seconds that it took.
+    pub seconds: f64,
+}
+
+/// The format of `run.json`.
+pub fn run_format() -> Format {
+    Format { name: "thalweg run".to_string(), version: 1 }
+}
+
+/// One line of the journal: the state after a round.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct JournalEntry {
+    /// The round, from 0.
+    pub round: u64,
+    /// Evaluations so far.
+    pub evaluations: u64,
+    /// Evaluations so far by heuristic.
+    pub by_heuristic: BTreeMap<String, u64>,
+    /// Evaluations so far spent on confirming minima.
+    pub confirming: u64,
+    /// The lowest value so far, of the objective as written.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub lowest: Option<f64>,
+    /// Distinct entries so far.
+    pub distinct: u64,
+    /// Those of them that are confirmed.
+    pub confirmed: u64,
+}
