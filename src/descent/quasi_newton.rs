@@ -207,6 +207,10 @@ impl Descent {
         // The minimum of the parabola through value, slope and trial value, kept within bounds.
         let curvature = rise - slope;
         let factor = if curvature > 0.0 { -0.5 * slope / curvature } else { 0.5 };
+        if self.steepest && factor * self.length * largest(&self.direction) < 1e-10 {
+            // A start that is a minimum already: what is left to go is rounding.
+            return self.finish(EndKind::Converged);
+        }
         self.shorten(factor.clamp(0.1, 0.5))
     }
 

@@ -171,3 +171,22 @@ fn starts_outside_the_landscape_say_so() {
     let (_, region, mut evaluator) = tools("unknown x in [-2, 2]\nminimise log(x) + x");
     assert_eq!(descend(&mut evaluator, &region, &[-1.0]).0.kind, EndKind::Outside);
 }
+
+/// A descent from a minimum ends there at once, whatever its value.
+#[test]
+fn minima_are_where_descents_from_them_end() {
+    for text in [
+        "unknown x[2] in [-2, 2]\nminimise (x[1]^2 - 1)^2 + (x[2]^2 - 1)^2 + 0.1*x[1]",
+        "unknown x[2] in [-2, 2]\nminimise (x[1] - 0.3)^2 + 7*(x[2] + 0.7)^2",
+    ] {
+        let (_, region, mut evaluator) = tools(text);
+        let (end, _) = descend(&mut evaluator, &region, &[-1.3, 0.4]);
+        let Judgement::Minimum { at, .. } = confirm(&mut evaluator, &region, &end.at) else { panic!("{end:?}") };
+        let (again, evaluations) = descend(&mut evaluator, &region, &at);
+        assert_eq!(again.kind, EndKind::Converged);
+        assert!(
+            evaluations <= 3 && again.at.iter().zip(&at).all(|(a, b)| (a - b).abs() < 1e-9),
+            "{evaluations}: {again:?}"
+        );
+    }
+}

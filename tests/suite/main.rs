@@ -25,3 +25,6 @@ mod floors;
 
 /// The commands: whole outputs, wrong input of every kind, exit statuses.
 mod commands;
+
+/// Whole hunts by the real program.
+mod hunts;
