@@ -31,6 +31,7 @@ pub struct Statement {
 }
 
 /// The kinds of statement.
+#[allow(clippy::large_enum_variant, reason = "a file has few statements, and none is copied")]
 #[derive(Clone, Debug, PartialEq)]
 pub enum StatementKind {
     /// `title "…"`

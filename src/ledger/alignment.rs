@@ -14,6 +14,8 @@ pub struct Cloud {
     dimensions: usize,
     /// Rows of one kind may be exchanged; others have kinds of their own.
     kinds: Vec<usize>,
+    /// Kinds as the invariants know them: one for all where rows may be renumbered.
+    loose_kinds: Vec<usize>,
     unit: f64,
     /// Whether a shift is declared.
     pub shifts: bool,
@@ -38,8 +40,24 @@ impl Cloud {
                 Some(group) => *group_kinds[group].get_or_insert_with(&mut new_kind),
                 None => new_kind(),
             })
-            .collect();
-        Cloud { dimensions: rows[0].len(), rows: rows.to_vec(), kinds, unit, shifts: false, mirrors: false }
+            .collect::<Vec<usize>>();
+        let loose_kinds = kinds.clone();
+        Cloud {
+            loose_kinds,
+            dimensions: rows[0].len(),
+            rows: rows.to_vec(),
+            kinds,
+            unit,
+            shifts: false,
+            mirrors: false,
+        }
+    }
+
+    /// Makes the invariants blind to the numbers of rows if any of its slots is renumbered by a reversal or a cycle.
+    pub fn loosen(&mut self, renumbered: impl Fn(usize) -> bool) {
+        if self.rows.iter().flatten().any(|&slot| renumbered(slot)) {
+            self.loose_kinds.iter_mut().for_each(|kind| *kind = 0);
+        }
     }
 
     /// Whether these are its rows.
@@ -50,8 +68,11 @@ impl Cloud {
     /// The distances of the rows from the middle, in units: sorted within each kind, kind by kind.
     pub fn sorted_radii(&self, at: &[f64]) -> Vec<f64> {
         let (points, _) = self.points(at);
-        let mut radii: Vec<(usize, Total)> =
-            points.iter().zip(&self.kinds).map(|(point, &kind)| (kind, Total(length(point) / self.unit))).collect();
+        let mut radii: Vec<(usize, Total)> = points
+            .iter()
+            .zip(&self.loose_kinds)
+            .map(|(point, &kind)| (kind, Total(length(point) / self.unit)))
+            .collect();
         radii.sort();
         radii.into_iter().map(|(_, radius)| radius.0).collect()
     }
@@ -168,15 +189,15 @@ pub fn placements(cloud: &Cloud, left: &[f64], right: &[f64], near: f64, take: &
             continue;
         };
         let to = frame(a, &ours[second]);
-        for k in 0..theirs.len() {
+        for (k, point) in theirs.iter().enumerate() {
             let fits = k != other
                 && like(second, k)
-                && (length(&minus(&theirs[k], b)) - apart(second)).abs() <= 2.0 * slack
-                && length(&cross(&unit(b), &theirs[k])) > 0.1 * sine(second);
+                && (length(&minus(point, b)) - apart(second)).abs() <= 2.0 * slack
+                && length(&cross(&unit(b), point)) > 0.1 * sine(second);
             if !fits {
                 continue;
             }
-            let from = frame(b, &theirs[k]);
+            let from = frame(b, point);
             for sign in [1.0, -1.0].into_iter().filter(|&sign| sign > 0.0 || cloud.mirrors) {
                 if take(place(&|point| turn(&to, &from, point, sign))) {
                     return;

@@ -88,6 +88,14 @@ impl Finite {
         }
     }
 
+    /// Whether it moves or flips a slot.
+    fn moves(&self, slot: usize) -> bool {
+        match self {
+            Finite::Flip(slots) => slots.contains(&slot),
+            Finite::Reverse(rows) | Finite::Cycle(rows) => rows.iter().any(|row| row.contains(&slot)),
+        }
+    }
+
     fn apply(&self, times: usize, from: &[f64]) -> Vec<f64> {
         let mut to = from.to_vec();
         let mut renumber = |rows: &[Vec<usize>], source: &dyn Fn(usize) -> usize| {
@@ -146,6 +154,13 @@ impl Identity {
                 },
                 _ => {}
             }
+        }
+        for cloud in &mut clouds {
+            cloud.loosen(|slot| {
+                finite.iter().any(|generator| {
+                    matches!(generator, Finite::Reverse(_) | Finite::Cycle(_)) && generator.moves(slot)
+                })
+            });
         }
         let mut exchanged = vec![false; slots.len()];
         exchanges.iter().flatten().flatten().for_each(|&slot| exchanged[slot] = true);

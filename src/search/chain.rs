@@ -91,10 +91,11 @@ impl Chains {
     /// The next step of a round: a proposal and the mark that comes back with its result. `turn` counts the hop steps
     /// of this round; even and odd rounds have chains of their own, since a round does not see the one before it.
     pub fn propose(&mut self, round: u64, turn: u64, ledger: &Ledger, rng: &mut impl Rng) -> (Proposal, u64) {
-        if !self.departures.is_empty() && rng.random::<f64>() < LEDGER_SHARE {
-            if let Some(proposal) = self.depart(ledger, rng) {
-                return (proposal, NO_CHAIN);
-            }
+        if !self.departures.is_empty()
+            && rng.random::<f64>() < LEDGER_SHARE
+            && let Some(proposal) = self.depart(ledger, rng)
+        {
+            return (proposal, NO_CHAIN);
         }
         let number = (2 * turn + round % 2) as usize;
         while self.chains.len() <= number {

@@ -77,7 +77,7 @@ impl Hunt {
                     // Every other start is spread evenly; the rest are independent of each other.
                     self.spread_drawn += 1;
                     let number = self.spread_drawn;
-                    (if number % 2 == 0 { Proposal::Spread(number / 2) } else { Proposal::Uniform }, 0)
+                    (if number.is_multiple_of(2) { Proposal::Spread(number / 2) } else { Proposal::Uniform }, 0)
                 }
                 Heuristic::Hop => {
                     hops += 1;
@@ -235,12 +235,11 @@ impl Hunt {
             self.asked_to_confirm.insert(entry);
             work.push(Work::Confirm { entry, at });
         }
-        if let Some(lowest) = lowest.filter(|&entry| !self.ledger.is_confirmed(entry)) {
-            if self.asked_to_confirm.insert(lowest) {
-                if let Some(at) = self.ledger.point(lowest) {
-                    work.push(Work::Confirm { entry: lowest, at });
-                }
-            }
+        if let Some(lowest) = lowest.filter(|&entry| !self.ledger.is_confirmed(entry))
+            && self.asked_to_confirm.insert(lowest)
+            && let Some(at) = self.ledger.point(lowest)
+        {
+            work.push(Work::Confirm { entry: lowest, at });
         }
     }
 }

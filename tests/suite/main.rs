@@ -14,6 +14,9 @@ mod kernel;
 /// Descents and confirmations on compiled landscapes.
 mod descents;
 
+/// Same or distinct, under every kind of promise.
+mod identity;
+
 /// The main job against published values.
 mod published;
 

@@ -333,6 +333,7 @@ unsafe fn angles<const K: usize, const C: usize>(
 
 /// # Safety
 /// The rows must have the chunks.
+#[allow(clippy::undocumented_unsafe_blocks, reason = "the contract above serves every arm of the macro")]
 #[inline(always)]
 unsafe fn unary<const K: usize, const C: usize>(kind: Unary, to: *mut f64, a: *const f64) {
     macro_rules! each {
@@ -368,6 +369,7 @@ unsafe fn unary<const K: usize, const C: usize>(kind: Unary, to: *mut f64, a: *c
 
 /// # Safety
 /// The rows must have the chunks.
+#[allow(clippy::undocumented_unsafe_blocks, reason = "the contract above serves every arm of the macro")]
 #[inline(always)]
 unsafe fn binary<const K: usize, const C: usize>(kind: Binary, to: *mut f64, a: *const f64, b: *const f64) {
     macro_rules! each {
@@ -383,6 +385,7 @@ unsafe fn binary<const K: usize, const C: usize>(kind: Binary, to: *mut f64, a: 
 
 /// # Safety
 /// The rows must have the chunks.
+#[allow(clippy::undocumented_unsafe_blocks, reason = "the contract above serves every arm of the macro")]
 #[inline(always)]
 unsafe fn select<const K: usize, const C: usize>(relation: Relation, to: *mut f64, rows: [*mut f64; 4]) {
     macro_rules! each {
