@@ -135,7 +135,7 @@ impl Mistake {
                 format!("a statement cannot begin with {found}"),
                 some("a line goes on only while a bracket is open or the line before ends in an operator or comma"),
             ),
-            Mistake::Expected { needed, found } => (format!("{needed} is needed here, but there is {found}"), None),
+            Mistake::Expected { needed, found } => (format!("here should stand {needed}, and there is {found}"), None),
             Mistake::Trailing(found) => (
                 format!("the statement is complete before {found}"),
                 some("one statement a line; is an operator missing?"),

@@ -5,6 +5,8 @@
 //! text. Deliberately absent: names, shapes and values (see `landscape`), and any look at the disk.
 
 pub mod diagnostic;
+#[cfg(test)]
+mod goldens;
 mod lexer;
 pub mod mistake;
 mod parse;

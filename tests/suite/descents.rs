@@ -35,11 +35,11 @@ fn confirm(evaluator: &mut Evaluator, region: &Arc<Region>, at: &[f64]) -> Judge
         }
         match confirmation.ask() {
             Ask::Gradient(at) => {
-                let (value, gradient) = evaluator.value_and_gradient(&at.to_vec());
+                let (value, gradient) = evaluator.value_and_gradient(at);
                 confirmation.tell_gradient(value, &gradient);
             }
             Ask::Curvature(at) => {
-                let matrix = evaluator.curvature(&at.to_vec());
+                let matrix = evaluator.curvature(at);
                 confirmation.tell_curvature(&matrix);
             }
         }

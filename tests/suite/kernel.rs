@@ -194,9 +194,8 @@ fn executors_agree_to_the_bit() {
                 let mut machine = LaneMachine::with_build(&kernel.gradient, lanes, build);
                 for first in (0..points.len()).step_by(lanes) {
                     for lane in 0..lanes {
-                        for slot in 0..n {
-                            machine.rows_mut(Role::Unknowns)[slot * lanes + lane] =
-                                points[(first + lane) % points.len()][slot];
+                        for (slot, x) in points[(first + lane) % points.len()].iter().enumerate() {
+                            machine.rows_mut(Role::Unknowns)[slot * lanes + lane] = *x;
                         }
                     }
                     machine.run();

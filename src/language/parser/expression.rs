@@ -6,6 +6,9 @@ use super::super::token::{Sign, TokenKind};
 use super::super::tree::{Arithmetic, Comparison, Expression, ExpressionKind, Name, Reduction};
 use super::{Parsed, Parser, RESERVED};
 
+/// The most operators in a row. A longer sum was written by a program, which can write a list and a `sum` over it.
+const MAX_LINKS: usize = 2000;
+
 const REDUCTIONS: [(&str, Reduction); 4] = [
     ("sum", Reduction::Sum),
     ("product", Reduction::Product),
@@ -20,6 +23,15 @@ fn node(start: Span, end: Span, kind: ExpressionKind) -> Expression {
 impl Parser<'_> {
     pub(super) fn expression(&mut self) -> Parsed<Expression> {
         self.deeper(|parser| if parser.is_word("if") { parser.conditional() } else { parser.disjunction() })
+    }
+
+    /// Counts a link of a chain such as `a + b + c`, whose tree is as deep as the chain is long.
+    fn link(&mut self, links: &mut usize) -> Parsed<()> {
+        *links += 1;
+        if *links > MAX_LINKS {
+            return self.refuse(Mistake::TooDeep(MAX_LINKS), self.span());
+        }
+        Ok(())
     }
 
     fn conditional(&mut self) -> Parsed<Expression> {
@@ -42,7 +54,9 @@ impl Parser<'_> {
 
     fn disjunction(&mut self) -> Parsed<Expression> {
         let mut left = self.conjunction()?;
+        let mut links = 0;
         while self.take_word("or") {
+            self.link(&mut links)?;
             let right = self.conjunction()?;
             left = node(left.span, right.span, ExpressionKind::Or(Box::new(left), Box::new(right)));
         }
@@ -51,7 +65,9 @@ impl Parser<'_> {
 
     fn conjunction(&mut self) -> Parsed<Expression> {
         let mut left = self.negation()?;
+        let mut links = 0;
         while self.take_word("and") {
+            self.link(&mut links)?;
             let right = self.negation()?;
             left = node(left.span, right.span, ExpressionKind::And(Box::new(left), Box::new(right)));
         }
@@ -94,7 +110,9 @@ impl Parser<'_> {
 
     fn sum(&mut self) -> Parsed<Expression> {
         let mut left = self.term()?;
+        let mut links = 0;
         loop {
+            self.link(&mut links)?;
             let operator = match self.kind() {
                 TokenKind::Sign(Sign::Plus) => Arithmetic::Add,
                 TokenKind::Sign(Sign::Minus) => Arithmetic::Subtract,
@@ -108,7 +126,9 @@ impl Parser<'_> {
 
     fn term(&mut self) -> Parsed<Expression> {
         let mut left = self.signed()?;
+        let mut links = 0;
         loop {
+            self.link(&mut links)?;
             let operator = match self.kind() {
                 TokenKind::Sign(Sign::Times) => Arithmetic::Multiply,
                 TokenKind::Sign(Sign::Over) => Arithmetic::Divide,
@@ -145,7 +165,9 @@ impl Parser<'_> {
 
     fn indexed(&mut self) -> Parsed<Expression> {
         let mut base = self.primary()?;
+        let mut links = 0;
         while self.take_sign(Sign::OpenSquare) {
+            self.link(&mut links)?;
             let indices = self.list(Sign::CloseSquare, "`,` or `]`", Self::expression)?;
             let start = base.span;
             base = node(start, self.last_span(), ExpressionKind::Index { base: Box::new(base), indices });
