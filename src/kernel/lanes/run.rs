@@ -174,6 +174,41 @@ unsafe fn interpret<const K: usize, const C: usize>(run: Run<'_>) {
             Kind::Select => unsafe {
                 select::<K, C>(Relation::ALL[operation.extra as usize], to, [at(a), at(b), at(c), at(d)]);
             },
+            Kind::Spread => unsafe {
+                let (a, b, row) = (at(a), at(b), at(c));
+                for chunk in 0..K / C {
+                    let (x, y) = (read::<C>(a, chunk), read::<C>(b, chunk));
+                    let (sum, less) = (read::<C>(to, chunk), read::<C>(row, chunk));
+                    let t: [f64; C] = std::array::from_fn(|lane| x[lane] * y[lane]);
+                    write::<C>(to, chunk, std::array::from_fn(|lane| sum[lane] + t[lane]));
+                    write::<C>(row, chunk, std::array::from_fn(|lane| less[lane] - t[lane]));
+                }
+            },
+            Kind::Square => unsafe {
+                let (a, b, square) = (at(a), at(b), at(c));
+                for chunk in 0..K / C {
+                    let (x, y) = (read::<C>(a, chunk), read::<C>(b, chunk));
+                    let t: [f64; C] = std::array::from_fn(|lane| x[lane] - y[lane]);
+                    write::<C>(to, chunk, t);
+                    write::<C>(square, chunk, std::array::from_fn(|lane| t[lane] * t[lane]));
+                }
+            },
+            Kind::SquareAdd => unsafe {
+                let (a, b, square, plus) = (at(a), at(b), at(c), at(d));
+                for chunk in 0..K / C {
+                    let (x, y, z) = (read::<C>(a, chunk), read::<C>(b, chunk), read::<C>(plus, chunk));
+                    let t: [f64; C] = std::array::from_fn(|lane| x[lane] - y[lane]);
+                    write::<C>(to, chunk, t);
+                    write::<C>(square, chunk, std::array::from_fn(|lane| t[lane] * t[lane] + z[lane]));
+                }
+            },
+            Kind::AddDifference => unsafe {
+                let (a, b, plus) = (at(a), at(b), at(c));
+                for chunk in 0..K / C {
+                    let (x, y, z) = (read::<C>(a, chunk), read::<C>(b, chunk), read::<C>(plus, chunk));
+                    write::<C>(to, chunk, std::array::from_fn(|lane| z[lane] + (x[lane] - y[lane])));
+                }
+            },
             Kind::Begin => {
                 let scope = &code.loops[operation.extra as usize];
                 let first = scope.first.at(&state.counters, &program.lookups);
@@ -188,6 +223,32 @@ unsafe fn interpret<const K: usize, const C: usize>(run: Run<'_>) {
                 for cursor in &scope.cursors {
                     set::<K>(cursor, memory, state, &program.lookups);
                 }
+                place = scope.body as usize;
+                if let Some(pair) = scope.pair
+                    && last > first
+                {
+                    for cursor in &scope.second {
+                        set::<K>(cursor, memory, state, &program.lookups);
+                    }
+                    place = pair as usize;
+                }
+            }
+            Kind::EndPair => {
+                let scope = &code.loops[operation.extra as usize];
+                // The counter is that of the first of the two turns, and such loops run upward.
+                let left = state.ends[scope.depth] - state.counters[scope.depth] - 1;
+                if left <= 0 {
+                    place = scope.exit as usize;
+                    continue;
+                }
+                state.counters[scope.depth] += 2;
+                for cursor in scope.cursors.iter().chain(&scope.second) {
+                    if let (Some(stride), Moves::Pointer(pointer, _)) = (cursor.stride, cursor.moves) {
+                        let pointer = &mut state.pointers[pointer as usize];
+                        *pointer = pointer.wrapping_offset(2 * stride as isize * K as isize);
+                    }
+                }
+                place = if left >= 2 { scope.pair.unwrap_or(scope.body) } else { scope.body } as usize;
             }
             Kind::End => {
                 let scope = &code.loops[operation.extra as usize];
