@@ -51,6 +51,12 @@ pub enum Kind {
     SquareAdd,
     /// `to = c + (a - b)`, each rounded.
     AddDifference,
+    /// `to = c + (d - a * b)`, each rounded.
+    AddLessProduct,
+    /// `to = 1 / a; c = to * to`, each rounded.
+    ReciprocalSquare,
+    /// `to = a * a; c = a * to`, each rounded.
+    SquareProduct,
     /// Begins loop `extra`.
     Begin,
     /// Ends two turns of loop `extra`.
@@ -74,6 +80,8 @@ pub struct Operation {
     pub from: [Pointer; 4],
     /// A number whose meaning depends on the kind.
     pub extra: u32,
+    /// Whether the next operation is the same for the other of two turns.
+    pub twin: bool,
 }
 
 /// A loop.
@@ -112,12 +120,18 @@ impl Operation {
             | Kind::EndPair
             | Kind::Unless
             | Kind::Jump => Vec::new(),
-            Kind::Copy | Kind::Reciprocal | Kind::Negate | Kind::SquareRoot | Kind::Unary => vec![a],
+            Kind::Copy
+            | Kind::Reciprocal
+            | Kind::ReciprocalSquare
+            | Kind::SquareProduct
+            | Kind::Negate
+            | Kind::SquareRoot
+            | Kind::Unary => vec![a],
             Kind::Add | Kind::Subtract | Kind::Multiply | Kind::Binary | Kind::Square => vec![a, b],
             Kind::MultiplyAdd | Kind::AddDifference => vec![a, b, c],
             Kind::Spread => vec![a, b, c, self.to],
             Kind::SquareAdd => vec![a, b, d],
-            Kind::Select => vec![a, b, c, d],
+            Kind::Select | Kind::AddLessProduct => vec![a, b, c, d],
         }
     }
 
@@ -125,7 +139,9 @@ impl Operation {
     pub fn writes(&self) -> Vec<Pointer> {
         match self.kind {
             Kind::Begin | Kind::End | Kind::EndPair | Kind::Unless | Kind::Jump => Vec::new(),
-            Kind::Spread | Kind::Square | Kind::SquareAdd => vec![self.to, self.from[2]],
+            Kind::Spread | Kind::Square | Kind::SquareAdd | Kind::ReciprocalSquare | Kind::SquareProduct => {
+                vec![self.to, self.from[2]]
+            }
             _ => vec![self.to],
         }
     }
@@ -336,7 +352,7 @@ impl Maker<'_> {
             let rename = |pointer: Pointer| renamed.get(&pointer).copied().unwrap_or(pointer);
             self.code.loops[number].pair = Some(self.here());
             for operation in &single {
-                self.code.operations.push(*operation);
+                self.code.operations.push(Operation { twin: true, ..*operation });
                 self.code.operations.push(operation.with_pointers(rename));
             }
             self.put(Kind::EndPair, 0, [0; 4], number as u32);
@@ -351,7 +367,7 @@ impl Maker<'_> {
     }
 
     fn put(&mut self, kind: Kind, to: Pointer, from: [Pointer; 4], extra: u32) {
-        self.code.operations.push(Operation { kind, to, from, extra });
+        self.code.operations.push(Operation { kind, to, from, extra, twin: false });
     }
 
     fn new_pointer(&mut self, row: usize) -> Option<Pointer> {

@@ -21,6 +21,8 @@ pub fn join(operations: &[Operation], temporary: &BTreeSet<Pointer>) -> Vec<Oper
         let (operation, length) = spread(rest, temporary)
             .or_else(|| square(rest))
             .or_else(|| add_difference(rest, temporary))
+            .or_else(|| add_less_product(rest, temporary))
+            .or_else(|| powers(rest))
             .unwrap_or((rest[0], 1));
         joined.push(operation);
         place += length;
@@ -44,7 +46,10 @@ fn spread(rest: &[Operation], temporary: &BTreeSet<Pointer>) -> Option<(Operatio
         && ![a, b].contains(&sum.to)
         && ![a, b].contains(&difference.to)
         && is_dead(t, after, temporary);
-    fits.then_some((Operation { kind: Kind::Spread, to: sum.to, from: [a, b, difference.to, 0], extra: 0 }, 3))
+    fits.then_some((
+        Operation { kind: Kind::Spread, to: sum.to, from: [a, b, difference.to, 0], extra: 0, twin: false },
+        3,
+    ))
 }
 
 /// `to = a - b; s = to * to`, or `s = to * to + c`
@@ -56,10 +61,10 @@ fn square(rest: &[Operation]) -> Option<(Operation, usize)> {
     let c = product.from[2];
     match product.kind {
         Kind::Multiply if fits => {
-            Some((Operation { kind: Kind::Square, to: d, from: [a, b, product.to, 0], extra: 0 }, 2))
+            Some((Operation { kind: Kind::Square, to: d, from: [a, b, product.to, 0], extra: 0, twin: false }, 2))
         }
         Kind::MultiplyAdd if fits && c != d => {
-            Some((Operation { kind: Kind::SquareAdd, to: d, from: [a, b, product.to, c], extra: 0 }, 2))
+            Some((Operation { kind: Kind::SquareAdd, to: d, from: [a, b, product.to, c], extra: 0, twin: false }, 2))
         }
         _ => None,
     }
@@ -77,7 +82,39 @@ fn add_difference(rest: &[Operation], temporary: &BTreeSet<Pointer>) -> Option<(
     };
     let fits =
         difference.kind == Kind::Subtract && sum.kind == Kind::Add && (sum.to == t || is_dead(t, after, temporary));
-    fits.then_some((Operation { kind: Kind::AddDifference, to: sum.to, from: [a, b, c, 0], extra: 0 }, 2))
+    fits.then_some((Operation { kind: Kind::AddDifference, to: sum.to, from: [a, b, c, 0], extra: 0, twin: false }, 2))
+}
+
+/// `u = a * b; t = d - u; to = c + t`
+fn add_less_product(rest: &[Operation], temporary: &BTreeSet<Pointer>) -> Option<(Operation, usize)> {
+    let [product, tail @ ..] = rest else { return None };
+    if product.kind != Kind::Multiply {
+        return None;
+    }
+    let (sum, length) = add_difference(tail, temporary)?;
+    let [d, u, c, _] = sum.from;
+    let fits = u == product.to && d != u && c != u && is_dead(u, &tail[length..], temporary);
+    let [a, b, ..] = product.from;
+    fits.then_some((
+        Operation { kind: Kind::AddLessProduct, to: sum.to, from: [a, b, c, d], extra: 0, twin: false },
+        length + 1,
+    ))
+}
+
+/// `to = 1 / a; c = to * to`, or `to = a * a; c = a * to`
+fn powers(rest: &[Operation]) -> Option<(Operation, usize)> {
+    let [first, second, ..] = rest else { return None };
+    let (a, t) = (first.from[0], first.to);
+    if second.kind != Kind::Multiply || second.to == t || t == a {
+        return None;
+    }
+    let factors = (second.from[0], second.from[1]);
+    let kind = match first.kind {
+        Kind::Reciprocal if factors == (t, t) => Kind::ReciprocalSquare,
+        Kind::Multiply if first.from[1] == a && (factors == (a, t) || factors == (t, a)) => Kind::SquareProduct,
+        _ => return None,
+    };
+    Some((Operation { kind, to: t, from: [a, 0, second.to, 0], extra: 0, twin: false }, 2))
 }
 
 /// Whether nothing reads a register before it is set again.
@@ -139,6 +176,9 @@ pub fn can_pair(
         Kind::Square,
         Kind::SquareAdd,
         Kind::AddDifference,
+        Kind::AddLessProduct,
+        Kind::ReciprocalSquare,
+        Kind::SquareProduct,
     ];
     if operations.iter().any(|operation| !known.contains(&operation.kind)) {
         return false;
