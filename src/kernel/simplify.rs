@@ -240,6 +240,17 @@ impl Simplifier<'_> {
         if factor == 1.0 {
             return of;
         }
+        // A power of two times a sum of scaled terms goes into the scales, without a rounding.
+        if functions::is_power_of_two(factor)
+            && factor.abs() != 1.0
+            && let Some(Fact { instruction: Instruction::Binary { operation, left, right, .. }, .. }) =
+                self.facts.get(&of).cloned()
+            && matches!(operation, Binary::Add | Binary::Subtract)
+            && let (Some((a, left)), Some((b, right))) = (self.scaled(left), self.scaled(right))
+        {
+            let (left, right) = (self.times(factor * a, left), self.times(factor * b, right));
+            return self.binary(operation, left, right);
+        }
         if factor == -1.0 {
             return self.share(Instruction::Unary { to: Register(0), operation: Unary::Negate, of });
         }

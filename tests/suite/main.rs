@@ -5,6 +5,9 @@
 /// What the others share: problems from text, hunts, published tables.
 mod support;
 
+/// The language from text to landscape.
+mod language;
+
 /// The elementary functions against a table of exact values.
 mod functions;
 

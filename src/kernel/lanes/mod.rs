@@ -11,9 +11,11 @@
 //! rows, loops with known cursors, nothing that depends on a lane.
 //!
 //! - `code`: the flat code and how it is made.
+//! - `compound`: innermost loops made faster.
 //! - `run`: the loop over it, in three builds.
 
 mod code;
+mod compound;
 mod run;
 
 use std::sync::Arc;

@@ -7,7 +7,7 @@ use crate::landscape::term::Index;
 use crate::numbers::functions;
 use crate::numbers::operation::{Binary, Relation, Unary};
 
-use super::code::{Code, Cursor, Kind, Moves, Pointer};
+use super::code::{Code, Cursor, Kind, Moves, Operation, Pointer};
 
 /// A build of the interpreter.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
@@ -142,38 +142,110 @@ unsafe fn interpret<const K: usize, const C: usize>(run: Run<'_>) {
         // SAFETY: pointers are numbered below the length of `pointers`, and each points to a row inside the memory: the
         // verifier has shown that every index stays inside its buffer.
         let at = |pointer: Pointer| unsafe { *pointers.add(pointer as usize) };
-        let to = at(operation.to);
-        let [a, b, c, d] = operation.from;
-        // SAFETY (for the blocks below): rows are disjoint or the same, and operands are read, chunk by chunk, before the
-        // result is written; so an operation may write a row that it reads.
+        // Does something for the operation and, where the next is its twin, for that too: one dispatch for both.
+        macro_rules! each {
+            (|$operation:ident, $to:ident, [$a:ident, $b:ident, $c:ident, $d:ident]| $body:expr) => {{
+                let does = |$operation: &Operation| {
+                    let $to = at($operation.to);
+                    let [$a, $b, $c, $d] = $operation.from.map(at);
+                    let _ = ($a, $b, $c, $d);
+                    // SAFETY: rows are disjoint or the same, and operands are read, chunk by chunk, before the result is
+                    // written; so an operation may write a row that it reads.
+                    unsafe { $body }
+                };
+                does(operation);
+                if operation.twin {
+                    // SAFETY: a twin is followed by its other half.
+                    does(unsafe { &*operations.add(place) });
+                    place += 1;
+                }
+            }};
+        }
         match operation.kind {
-            Kind::Multiply => unsafe { pairs::<K, C>(to, at(a), at(b), |x, y| x * y) },
-            Kind::MultiplyAdd => unsafe {
-                let (a, b, c) = (at(a), at(b), at(c));
+            Kind::Multiply => each!(|_o, to, [a, b, _c, _d]| pairs::<K, C>(to, a, b, |x, y| x * y)),
+            Kind::Add => each!(|_o, to, [a, b, _c, _d]| pairs::<K, C>(to, a, b, |x, y| x + y)),
+            Kind::Subtract => each!(|_o, to, [a, b, _c, _d]| pairs::<K, C>(to, a, b, |x, y| x - y)),
+            Kind::Reciprocal => each!(|_o, to, [a, _b, _c, _d]| singles::<K, C>(to, a, |x| 1.0 / x)),
+            Kind::Negate => each!(|_o, to, [a, _b, _c, _d]| singles::<K, C>(to, a, |x| -x)),
+            Kind::SquareRoot => each!(|_o, to, [a, _b, _c, _d]| singles::<K, C>(to, a, f64::sqrt)),
+            Kind::Copy => each!(|_o, to, [a, _b, _c, _d]| singles::<K, C>(to, a, |x| x)),
+            Kind::MultiplyAdd => each!(|_o, to, [a, b, c, _d]| {
                 for chunk in 0..K / C {
                     let (x, y, z) = (read::<C>(a, chunk), read::<C>(b, chunk), read::<C>(c, chunk));
                     write::<C>(to, chunk, std::array::from_fn(|lane| x[lane] * y[lane] + z[lane]));
                 }
-            },
-            Kind::Add => unsafe { pairs::<K, C>(to, at(a), at(b), |x, y| x + y) },
-            Kind::Subtract => unsafe { pairs::<K, C>(to, at(a), at(b), |x, y| x - y) },
-            Kind::Reciprocal => unsafe { singles::<K, C>(to, at(a), |x| 1.0 / x) },
-            Kind::Negate => unsafe { singles::<K, C>(to, at(a), |x| -x) },
-            Kind::SquareRoot => unsafe { singles::<K, C>(to, at(a), f64::sqrt) },
-            Kind::Copy => unsafe { singles::<K, C>(to, at(a), |x| x) },
-            Kind::Fill => unsafe { fill::<K, C>(to, *code.numbers.get_unchecked(operation.extra as usize)) },
-            Kind::Number => unsafe { fill::<K, C>(to, *state.places.get_unchecked(operation.extra as usize) as f64) },
-            Kind::Table => unsafe {
-                let number = operation.extra as usize;
+            }),
+            Kind::Fill => {
+                each!(|o, to, [_a, _b, _c, _d]| fill::<K, C>(to, *code.numbers.get_unchecked(o.extra as usize)))
+            }
+            Kind::Number => {
+                each!(|o, to, [_a, _b, _c, _d]| fill::<K, C>(to, *state.places.get_unchecked(o.extra as usize) as f64))
+            }
+            Kind::Table => each!(|o, to, [_a, _b, _c, _d]| {
+                let number = o.extra as usize;
                 let table = code.places.get_unchecked(number).unwrap_or(0) as usize;
                 let place = *state.places.get_unchecked(number) as usize;
                 fill::<K, C>(to, *program.tables.get_unchecked(table).get_unchecked(place));
-            },
-            Kind::Unary => unsafe { unary::<K, C>(Unary::ALL[operation.extra as usize], to, at(a)) },
-            Kind::Binary => unsafe { binary::<K, C>(Binary::ALL[operation.extra as usize], to, at(a), at(b)) },
-            Kind::Select => unsafe {
-                select::<K, C>(Relation::ALL[operation.extra as usize], to, [at(a), at(b), at(c), at(d)]);
-            },
+            }),
+            Kind::Unary => each!(|o, to, [a, _b, _c, _d]| unary::<K, C>(Unary::ALL[o.extra as usize], to, a)),
+            Kind::Binary => each!(|o, to, [a, b, _c, _d]| binary::<K, C>(Binary::ALL[o.extra as usize], to, a, b)),
+            Kind::Select => {
+                each!(|o, to, [a, b, c, d]| select::<K, C>(Relation::ALL[o.extra as usize], to, [a, b, c, d]))
+            }
+            Kind::Spread => each!(|_o, to, [a, b, row, _d]| {
+                for chunk in 0..K / C {
+                    let (x, y) = (read::<C>(a, chunk), read::<C>(b, chunk));
+                    let (sum, less) = (read::<C>(to, chunk), read::<C>(row, chunk));
+                    let t: [f64; C] = std::array::from_fn(|lane| x[lane] * y[lane]);
+                    write::<C>(to, chunk, std::array::from_fn(|lane| sum[lane] + t[lane]));
+                    write::<C>(row, chunk, std::array::from_fn(|lane| less[lane] - t[lane]));
+                }
+            }),
+            Kind::Square => each!(|_o, to, [a, b, square, _d]| {
+                for chunk in 0..K / C {
+                    let (x, y) = (read::<C>(a, chunk), read::<C>(b, chunk));
+                    let t: [f64; C] = std::array::from_fn(|lane| x[lane] - y[lane]);
+                    write::<C>(to, chunk, t);
+                    write::<C>(square, chunk, std::array::from_fn(|lane| t[lane] * t[lane]));
+                }
+            }),
+            Kind::SquareAdd => each!(|_o, to, [a, b, square, plus]| {
+                for chunk in 0..K / C {
+                    let (x, y, z) = (read::<C>(a, chunk), read::<C>(b, chunk), read::<C>(plus, chunk));
+                    let t: [f64; C] = std::array::from_fn(|lane| x[lane] - y[lane]);
+                    write::<C>(to, chunk, t);
+                    write::<C>(square, chunk, std::array::from_fn(|lane| t[lane] * t[lane] + z[lane]));
+                }
+            }),
+            Kind::AddDifference => each!(|_o, to, [a, b, plus, _d]| {
+                for chunk in 0..K / C {
+                    let (x, y, z) = (read::<C>(a, chunk), read::<C>(b, chunk), read::<C>(plus, chunk));
+                    write::<C>(to, chunk, std::array::from_fn(|lane| z[lane] + (x[lane] - y[lane])));
+                }
+            }),
+            Kind::AddLessProduct => each!(|_o, to, [a, b, plus, whole]| {
+                for chunk in 0..K / C {
+                    let (x, y) = (read::<C>(a, chunk), read::<C>(b, chunk));
+                    let (z, w) = (read::<C>(plus, chunk), read::<C>(whole, chunk));
+                    write::<C>(to, chunk, std::array::from_fn(|lane| z[lane] + (w[lane] - x[lane] * y[lane])));
+                }
+            }),
+            Kind::ReciprocalSquare => each!(|_o, to, [a, _b, square, _d]| {
+                for chunk in 0..K / C {
+                    let x = read::<C>(a, chunk);
+                    let t: [f64; C] = std::array::from_fn(|lane| 1.0 / x[lane]);
+                    write::<C>(to, chunk, t);
+                    write::<C>(square, chunk, std::array::from_fn(|lane| t[lane] * t[lane]));
+                }
+            }),
+            Kind::SquareProduct => each!(|_o, to, [a, _b, product, _d]| {
+                for chunk in 0..K / C {
+                    let x = read::<C>(a, chunk);
+                    let t: [f64; C] = std::array::from_fn(|lane| x[lane] * x[lane]);
+                    write::<C>(to, chunk, t);
+                    write::<C>(product, chunk, std::array::from_fn(|lane| x[lane] * t[lane]));
+                }
+            }),
             Kind::Begin => {
                 let scope = &code.loops[operation.extra as usize];
                 let first = scope.first.at(&state.counters, &program.lookups);
@@ -188,6 +260,32 @@ unsafe fn interpret<const K: usize, const C: usize>(run: Run<'_>) {
                 for cursor in &scope.cursors {
                     set::<K>(cursor, memory, state, &program.lookups);
                 }
+                place = scope.body as usize;
+                if let Some(pair) = scope.pair
+                    && last > first
+                {
+                    for cursor in &scope.second {
+                        set::<K>(cursor, memory, state, &program.lookups);
+                    }
+                    place = pair as usize;
+                }
+            }
+            Kind::EndPair => {
+                let scope = &code.loops[operation.extra as usize];
+                // The counter is that of the first of the two turns, and such loops run upward.
+                let left = state.ends[scope.depth] - state.counters[scope.depth] - 1;
+                if left <= 0 {
+                    place = scope.exit as usize;
+                    continue;
+                }
+                state.counters[scope.depth] += 2;
+                for cursor in scope.cursors.iter().chain(&scope.second) {
+                    if let (Some(stride), Moves::Pointer(pointer, _)) = (cursor.stride, cursor.moves) {
+                        let pointer = &mut state.pointers[pointer as usize];
+                        *pointer = pointer.wrapping_offset(2 * stride as isize * K as isize);
+                    }
+                }
+                place = if left >= 2 { scope.pair.unwrap_or(scope.body) } else { scope.body } as usize;
             }
             Kind::End => {
                 let scope = &code.loops[operation.extra as usize];
