@@ -6,7 +6,7 @@ use crate::kernel::program::{BufferId, Instruction, Program, Register, Role, Ste
 use crate::landscape::term::{Affine, Index, IndexCondition};
 use crate::numbers::operation::{Binary, Unary};
 
-use super::compound::{Standing, can_pair, join, temporaries};
+use super::compound::{Standing, can_pair, join, temporaries, widen};
 
 /// The place of a pointer to a row.
 pub type Pointer = u32;
@@ -57,6 +57,10 @@ pub enum Kind {
     ReciprocalSquare,
     /// `to = a * a; c = a * to`, each rounded.
     SquareProduct,
+    /// A square and two added squares, those of the distance of two points: differences and sum as `wides[extra]` says.
+    Distance,
+    /// Three spreads, those of the slopes of a distance, as `wides[extra]` says.
+    SpreadThree,
     /// Begins loop `extra`.
     Begin,
     /// Ends two turns of loop `extra`.
@@ -97,6 +101,12 @@ pub struct Loop {
     pub depth: usize,
     /// The cursors that it keeps.
     pub cursors: Vec<Cursor>,
+    /// Those of the cursors that only move a pointer by so many rows with each turn.
+    pub steps: Vec<(Pointer, isize)>,
+    /// The others, which are worked out or are places.
+    pub others: Vec<Cursor>,
+    /// The pointers of both turns side by side, with the rows of two turns.
+    pub pair_steps: Vec<(Pointer, isize)>,
     /// The cursors of the second of two turns side by side.
     pub second: Vec<Cursor>,
     /// The operation behind its end.
@@ -112,6 +122,8 @@ impl Operation {
     pub fn reads(&self) -> Vec<Pointer> {
         let [a, b, c, d] = self.from;
         match self.kind {
+            // Wide operations are formed when nobody asks any more.
+            Kind::Distance | Kind::SpreadThree => Vec::new(),
             Kind::Fill
             | Kind::Number
             | Kind::Table
@@ -190,6 +202,9 @@ pub struct Code {
     pub loops: Vec<Loop>,
     /// The branches.
     pub branches: Vec<Branch>,
+    /// Pointers of operations that have many: for a distance `a, b, difference` three times, then the sum; for three
+    /// spreads `a, b, sum, row` three times.
+    pub wides: Vec<[Pointer; 12]>,
     /// Numbers that rows are filled with.
     pub numbers: Vec<f64>,
     /// The row that each pointer points to at the start.
@@ -219,6 +234,7 @@ impl Code {
             operations: Vec::new(),
             loops: Vec::new(),
             branches: Vec::new(),
+            wides: Vec::new(),
             numbers: Vec::new(),
             pointers: Vec::new(),
             places: Vec::new(),
@@ -275,6 +291,9 @@ impl Maker<'_> {
                         descending: *descending,
                         depth: self.open.len(),
                         cursors: Vec::new(),
+                        steps: Vec::new(),
+                        others: Vec::new(),
+                        pair_steps: Vec::new(),
                         second: Vec::new(),
                         exit: 0,
                         body: 0,
@@ -289,6 +308,21 @@ impl Maker<'_> {
                         self.refine(number)?;
                     }
                     self.open.pop();
+                    let scope = &mut self.code.loops[number];
+                    for cursor in &scope.cursors {
+                        match (cursor.moves, cursor.stride) {
+                            (Moves::Pointer(pointer, _), Some(stride)) => {
+                                let way = if scope.descending { -1 } else { 1 };
+                                scope.steps.push((pointer, (way * stride) as isize));
+                            }
+                            _ => scope.others.push(cursor.clone()),
+                        }
+                    }
+                    for cursor in scope.cursors.iter().chain(&scope.second).filter(|_| scope.pair.is_some()) {
+                        if let (Moves::Pointer(pointer, _), Some(stride)) = (cursor.moves, cursor.stride) {
+                            scope.pair_steps.push((pointer, 2 * stride as isize));
+                        }
+                    }
                     self.put(Kind::End, 0, [0; 4], number as u32);
                     self.code.loops[number].exit = self.here();
                 }
@@ -351,13 +385,16 @@ impl Maker<'_> {
             debug_assert_eq!(depth as usize, self.code.loops[number].depth);
             let rename = |pointer: Pointer| renamed.get(&pointer).copied().unwrap_or(pointer);
             self.code.loops[number].pair = Some(self.here());
-            for operation in &single {
-                self.code.operations.push(Operation { twin: true, ..*operation });
-                self.code.operations.push(operation.with_pointers(rename));
+            let renamed: Vec<Operation> = single.iter().map(|operation| operation.with_pointers(rename)).collect();
+            let (firsts, seconds) = (widen(&single, &mut self.code.wides), widen(&renamed, &mut self.code.wides));
+            for (first, second) in firsts.into_iter().zip(seconds) {
+                self.code.operations.push(Operation { twin: true, ..first });
+                self.code.operations.push(second);
             }
             self.put(Kind::EndPair, 0, [0; 4], number as u32);
             self.code.loops[number].body = self.here();
         }
+        let single = widen(&single, &mut self.code.wides);
         self.code.operations.extend(single);
         Some(())
     }

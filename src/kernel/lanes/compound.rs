@@ -117,6 +117,57 @@ fn powers(rest: &[Operation]) -> Option<(Operation, usize)> {
     Some((Operation { kind, to: t, from: [a, 0, second.to, 0], extra: 0, twin: false }, 2))
 }
 
+/// Joins the three squares of a distance, and three spreads in a row, into one operation each.
+///
+/// To be called last: wide operations keep their pointers aside. Two lists of the same kinds widen alike.
+pub fn widen(operations: &[Operation], wides: &mut Vec<[Pointer; 12]>) -> Vec<Operation> {
+    let mut widened = Vec::with_capacity(operations.len());
+    let mut place = 0;
+    while place < operations.len() {
+        let [first, second, third] = match &operations[place..] {
+            [first, second, third, ..] => [first, second, third],
+            rest => {
+                widened.extend(rest);
+                break;
+            }
+        };
+        let chained = second.from[3] == first.from[2] && third.from[3] == second.from[2];
+        // Differences and sums in rows of their own, so that nothing is read that was only just written.
+        let results = [first.to, second.to, third.to, third.from[2]];
+        let inputs = [first.from[0], first.from[1], second.from[0], second.from[1], third.from[0], third.from[1]];
+        let apart = (0..4).all(|k| !inputs.contains(&results[k]) && !results[..k].contains(&results[k]));
+        let kinds = (first.kind, second.kind, third.kind);
+        let kind = match kinds {
+            (Kind::Square, Kind::SquareAdd, Kind::SquareAdd) if chained && apart => Kind::Distance,
+            (Kind::Spread, Kind::Spread, Kind::Spread) => Kind::SpreadThree,
+            _ => {
+                widened.push(*first);
+                place += 1;
+                continue;
+            }
+        };
+        let mut wide = [0; 12];
+        for (pointers, operation) in
+            wide.chunks_exact_mut(if kind == Kind::Distance { 3 } else { 4 }).zip([first, second, third])
+        {
+            let [a, b, c, _] = operation.from;
+            if kind == Kind::Distance {
+                pointers.copy_from_slice(&[a, b, operation.to]);
+            } else {
+                pointers.copy_from_slice(&[a, b, operation.to, c]);
+            }
+        }
+        if kind == Kind::Distance {
+            wide[9] = third.from[2];
+        }
+        wides.push(wide);
+        let extra = wides.len() as u32 - 1;
+        widened.push(Operation { kind, to: wide[2], from: [0; 4], extra, twin: false });
+        place += 3;
+    }
+    widened
+}
+
 /// Whether nothing reads a register before it is set again.
 fn is_dead(register: Pointer, after: &[Operation], temporary: &BTreeSet<Pointer>) -> bool {
     for operation in after {

@@ -246,6 +246,36 @@ unsafe fn interpret<const K: usize, const C: usize>(run: Run<'_>) {
                     write::<C>(product, chunk, std::array::from_fn(|lane| x[lane] * t[lane]));
                 }
             }),
+            Kind::Distance => each!(|o, _to, [_a, _b, _c, _d]| {
+                let rows = code.wides.get_unchecked(o.extra as usize).map(at);
+                for chunk in 0..K / C {
+                    let difference = |k: usize| -> [f64; C] {
+                        let (x, y) = (read::<C>(rows[3 * k], chunk), read::<C>(rows[3 * k + 1], chunk));
+                        std::array::from_fn(|lane| x[lane] - y[lane])
+                    };
+                    let (x, y, z) = (difference(0), difference(1), difference(2));
+                    write::<C>(rows[2], chunk, x);
+                    write::<C>(rows[5], chunk, y);
+                    write::<C>(rows[8], chunk, z);
+                    let sum = |lane: usize| {
+                        let two = y[lane] * y[lane] + x[lane] * x[lane];
+                        z[lane] * z[lane] + two
+                    };
+                    write::<C>(rows[9], chunk, std::array::from_fn(sum));
+                }
+            }),
+            Kind::SpreadThree => each!(|o, _to, [_a, _b, _c, _d]| {
+                let rows = code.wides.get_unchecked(o.extra as usize).map(at);
+                for chunk in 0..K / C {
+                    for k in 0..3 {
+                        let (x, y) = (read::<C>(rows[4 * k], chunk), read::<C>(rows[4 * k + 1], chunk));
+                        let (sum, less) = (read::<C>(rows[4 * k + 2], chunk), read::<C>(rows[4 * k + 3], chunk));
+                        let t: [f64; C] = std::array::from_fn(|lane| x[lane] * y[lane]);
+                        write::<C>(rows[4 * k + 2], chunk, std::array::from_fn(|lane| sum[lane] + t[lane]));
+                        write::<C>(rows[4 * k + 3], chunk, std::array::from_fn(|lane| less[lane] - t[lane]));
+                    }
+                }
+            }),
             Kind::Begin => {
                 let scope = &code.loops[operation.extra as usize];
                 let first = scope.first.at(&state.counters, &program.lookups);
@@ -279,11 +309,10 @@ unsafe fn interpret<const K: usize, const C: usize>(run: Run<'_>) {
                     continue;
                 }
                 state.counters[scope.depth] += 2;
-                for cursor in scope.cursors.iter().chain(&scope.second) {
-                    if let (Some(stride), Moves::Pointer(pointer, _)) = (cursor.stride, cursor.moves) {
-                        let pointer = &mut state.pointers[pointer as usize];
-                        *pointer = pointer.wrapping_offset(2 * stride as isize * K as isize);
-                    }
+                for &(pointer, rows) in &scope.pair_steps {
+                    // SAFETY: pointers are numbered below the length of `pointers`.
+                    let pointer = unsafe { state.pointers.get_unchecked_mut(pointer as usize) };
+                    *pointer = pointer.wrapping_offset(rows * K as isize);
                 }
                 place = if left >= 2 { scope.pair.unwrap_or(scope.body) } else { scope.body } as usize;
             }
@@ -293,14 +322,15 @@ unsafe fn interpret<const K: usize, const C: usize>(run: Run<'_>) {
                 if *counter != state.ends[scope.depth] {
                     let way = if scope.descending { -1 } else { 1 };
                     *counter += way;
-                    for cursor in &scope.cursors {
+                    for &(pointer, rows) in &scope.steps {
+                        // SAFETY: pointers are numbered below the length of `pointers`.
+                        let pointer = unsafe { state.pointers.get_unchecked_mut(pointer as usize) };
+                        *pointer = pointer.wrapping_offset(rows * K as isize);
+                    }
+                    for cursor in &scope.others {
                         match (cursor.stride, cursor.moves) {
-                            (Some(stride), Moves::Pointer(pointer, _)) => {
-                                let pointer = &mut state.pointers[pointer as usize];
-                                *pointer = pointer.wrapping_offset((way * stride) as isize * K as isize);
-                            }
                             (Some(stride), Moves::Place(number)) => state.places[number as usize] += way * stride,
-                            (None, _) => set::<K>(cursor, memory, state, &program.lookups),
+                            _ => set::<K>(cursor, memory, state, &program.lookups),
                         }
                     }
                     place = scope.body as usize;
