@@ -16,7 +16,7 @@ pub const STATEMENT_WORDS: [&str; 11] =
 pub const MAX_DEPTH: usize = 200;
 
 /// Characters that word processors and papers use, with what the language has for them.
-const FANCY: [(char, &str); 12] = [
+const FANCY: &[(char, &str)] = &[
     ('−', "-"),
     ('–', "-"),
     ('—', "-"),
@@ -26,21 +26,74 @@ const FANCY: [(char, &str); 12] = [
     ('≤', "<="),
     ('≥', ">="),
     ('≠', "!="),
+    ('∗', "*"),
+    ('⋅', "*"),
+    ('∙', "*"),
+    ('⁄', "/"),
+    ('∕', "/"),
     ('“', "\""),
     ('”', "\""),
     ('…', ".."),
+    ('∞', "inf"),
+    ('∈', "in"),
+    ('∧', "and"),
+    ('∨', "or"),
+    ('¬', "not"),
+    ('√', "sqrt"),
+    ('∑', "sum"),
+    ('⁰', "^0"),
+    ('¹', "^1"),
+    ('²', "^2"),
+    ('³', "^3"),
+    ('⁴', "^4"),
+    ('⁵', "^5"),
+    ('⁶', "^6"),
+    ('⁷', "^7"),
+    ('⁸', "^8"),
+    ('⁹', "^9"),
+    ('₀', "_0"),
+    ('₁', "_1"),
+    ('₂', "_2"),
+    ('₃', "_3"),
+    ('₄', "_4"),
+    ('₅', "_5"),
+    ('₆', "_6"),
+    ('₇', "_7"),
+    ('₈', "_8"),
+    ('₉', "_9"),
 ];
 
 /// Signs of other notations, with what the language has for them; longer ones first.
 const FOREIGN: [(&str, &str); 8] =
     [("**", "^"), ("&&", "and"), ("||", "or"), (":=", "="), ("<>", "!="), ("=<", "<="), ("=>", ">="), ("!", "not")];
 
-/// The tokens of a text, and what was wrong with it. Every statement ends in a [`TokenKind::LineEnd`].
-pub fn lex(text: &str, diagnostics: &mut Vec<Diagnostic>) -> Vec<Token> {
+/// What the lexer made of a text.
+pub struct Lexed {
+    /// The tokens. Every statement ends in a [`TokenKind::LineEnd`].
+    pub tokens: Vec<Token>,
+    /// Places, ascending, of mistakes that leave open what was meant: what a parser says of their statements is a guess.
+    pub doubts: Vec<u32>,
+}
+
+/// Whether a character may stand in a name behind its first letter. Digits of other kinds (`²`, `₁`) may not: they would
+/// make names of what was meant as a power or an index.
+fn is_of_name(character: char) -> bool {
+    character.is_alphabetic() || character.is_ascii_digit() || character == '_'
+}
+
+/// Characters that a terminal obeys rather than shows: controls, and marks that change the direction of writing.
+pub fn is_unseen(character: char) -> bool {
+    character.is_control()
+        || matches!(character, '\u{200b}'..='\u{200f}' | '\u{2028}'..='\u{202e}' | '\u{2066}'..='\u{2069}')
+}
+
+/// The tokens of a text; what was wrong with it joins the diagnostics.
+pub fn lex(text: &str, diagnostics: &mut Vec<Diagnostic>) -> Lexed {
     let start = if text.starts_with('\u{feff}') { '\u{feff}'.len_utf8() } else { 0 };
-    let mut lexer = Lexer { text, place: start, tokens: Vec::new(), open: Vec::new(), diagnostics };
+    let mut lexer = Lexer { text, place: start, tokens: Vec::new(), open: Vec::new(), doubts: Vec::new(), diagnostics };
     lexer.run();
-    lexer.tokens
+    lexer.doubts.sort_unstable();
+    Lexed { tokens: lexer.tokens, doubts: lexer.doubts }
 }
 
 struct Lexer<'a> {
@@ -48,6 +101,7 @@ struct Lexer<'a> {
     place: usize,
     tokens: Vec<Token>,
     open: Vec<(char, Span)>,
+    doubts: Vec<u32>,
     diagnostics: &'a mut Vec<Diagnostic>,
 }
 
@@ -62,7 +116,11 @@ impl Lexer<'_> {
                 }
                 '#' => self.place += self.rest().find('\n').unwrap_or(self.rest().len()),
                 ' ' | '\t' | '\r' | '\u{a0}' => self.place += character.len_utf8(),
-                '"' => self.text(),
+                '"' => self.text('"'),
+                '“' => {
+                    self.refuse(Mistake::FancyCharacter('“', "\""), start, start + '“'.len_utf8());
+                    self.text('”');
+                }
                 '0'..='9' => self.number(),
                 '.' if self.rest()[1..].starts_with(|next: char| next.is_ascii_digit()) => self.number(),
                 _ if character.is_alphabetic() || character == '_' => self.word(),
@@ -86,6 +144,12 @@ impl Lexer<'_> {
         self.diagnostics.push(mistake.at(Span::new(start..end)));
     }
 
+    /// The same for a mistake that leaves open what was meant.
+    fn doubt(&mut self, mistake: Mistake, span: Span) {
+        self.doubts.push(span.start);
+        self.diagnostics.push(mistake.at(span));
+    }
+
     fn end_line(&mut self, start: usize) {
         let continues = match self.tokens.last().map(|token| &token.kind) {
             Some(TokenKind::Sign(sign)) => sign.continues(),
@@ -99,15 +163,19 @@ impl Lexer<'_> {
 
     fn word(&mut self) {
         let start = self.place;
-        let length = self.rest().find(|c: char| !(c.is_alphanumeric() || c == '_')).unwrap_or(self.rest().len());
+        let length = self.rest().find(|c: char| !is_of_name(c)).unwrap_or(self.rest().len());
         self.place += length;
         let word = &self.text[start..self.place];
-        let first_of_line = self.text[..start].rsplit('\n').next().is_some_and(|before| before.trim().is_empty());
-        if first_of_line && !self.open.is_empty() && STATEMENT_WORDS.contains(&word) {
-            self.close_all();
-            self.push(TokenKind::LineEnd, start, start);
+        // Neither an open bracket nor an operator at the end of the line before reaches over the next statement.
+        if STATEMENT_WORDS.contains(&word) {
+            let first_of_line = self.text[..start].rsplit('\n').next().is_some_and(|before| before.trim().is_empty());
+            if first_of_line && self.tokens.last().is_some_and(|token| token.kind != TokenKind::LineEnd) {
+                self.close_all();
+                self.push(TokenKind::LineEnd, start, start);
+            }
         }
-        let word = word.to_string();
+        // What a reader of mathematics expects.
+        let word = if word == "π" { "pi".to_string() } else { word.to_string() };
         self.push(TokenKind::Word(word), start, self.place);
     }
 
@@ -133,9 +201,18 @@ impl Lexer<'_> {
             }
         }
         // A name glued to a number (`2x`) is one mistake, not a number and a name.
-        let glued =
-            self.text[end..].find(|c: char| !(c.is_alphanumeric() || c == '_')).unwrap_or(self.text.len() - end);
-        self.place = end + glued;
+        let mut stop = end;
+        loop {
+            let glued = self.text[stop..].find(|c: char| !is_of_name(c)).unwrap_or(self.text.len() - stop);
+            stop += glued;
+            // So is a number with two points; `1..3` is a range.
+            if bytes.get(stop) != Some(&b'.') || !bytes.get(stop + 1).is_some_and(u8::is_ascii_digit) {
+                break;
+            }
+            stop += 1;
+        }
+        let glued = stop - end;
+        self.place = stop;
         let written = &self.text[start..self.place];
         match written.parse::<f64>() {
             Ok(number) if glued == 0 && number.is_finite() => self.push(TokenKind::Number(number), start, end),
@@ -150,21 +227,28 @@ impl Lexer<'_> {
         }
     }
 
-    fn text(&mut self) {
+    fn text(&mut self, close: char) {
         let start = self.place;
-        let inside = &self.text[start + 1..];
-        let line = inside.split('\n').next().unwrap_or("");
-        match line.find('"') {
+        let first = start + self.rest().chars().next().map_or(0, char::len_utf8);
+        let line = self.text[first..].split('\n').next().unwrap_or("");
+        let inside = match line.find(['"', close]) {
             Some(length) => {
-                self.place = start + length + 2;
-                self.push(TokenKind::Text(line[..length].to_string()), start, self.place);
+                let inside = &line[..length];
+                self.place = first + length + line[length..].chars().next().map_or(0, char::len_utf8);
+                inside
             }
             None => {
-                self.place = start + 1 + line.len();
+                let inside = line.trim_end();
+                self.place = first + inside.len();
                 self.refuse(Mistake::OpenText, start, self.place);
-                self.push(TokenKind::Text(line.trim_end().to_string()), start, self.place);
+                inside
             }
+        };
+        // Texts are shown by reports and terminals later.
+        if let Some((at, unseen)) = inside.char_indices().find(|&(_, character)| is_unseen(character)) {
+            self.refuse(Mistake::UnknownCharacter(unseen), first + at, first + at + unseen.len_utf8());
         }
+        self.push(TokenKind::Text(inside.to_string()), start, self.place);
     }
 
     fn sign(&mut self, character: char) {
@@ -192,7 +276,10 @@ impl Lexer<'_> {
             }
             _ => {
                 self.place += character.len_utf8();
-                self.refuse(Mistake::UnknownCharacter(character), start, self.place);
+                self.doubt(Mistake::UnknownCharacter(character), Span::new(start..self.place));
+                if character == ';' && self.open.is_empty() {
+                    self.push(TokenKind::LineEnd, start, self.place);
+                }
             }
         }
     }
@@ -202,7 +289,10 @@ impl Lexer<'_> {
         let end = self.place;
         if let Some(entry) = Sign::WRITTEN.iter().find(|entry| entry.0 == plain) {
             self.push(TokenKind::Sign(entry.1), start, end);
-        } else if plain != "\"" {
+        } else if let Some(digit) = plain.strip_prefix('^') {
+            self.push(TokenKind::Sign(Sign::Power), start, end);
+            self.push(TokenKind::Number(digit.parse().unwrap_or(1.0)), start, end);
+        } else if plain.starts_with(char::is_alphabetic) {
             self.push(TokenKind::Word(plain.to_string()), start, end);
         }
     }
@@ -224,10 +314,10 @@ impl Lexer<'_> {
             _ => return,
         };
         match self.open.pop() {
-            None => self.diagnostics.push(Mistake::StrayBracket(close).at(span)),
+            None => self.doubt(Mistake::StrayBracket(close), span),
             Some((opened, _)) if opened == open => {}
             Some((opened, place)) => {
-                self.diagnostics.push(Mistake::CrossedBrackets { open: opened, opened: place, close }.at(span));
+                self.doubt(Mistake::CrossedBrackets { open: opened, opened: place, close }, span);
             }
         }
     }
@@ -235,7 +325,7 @@ impl Lexer<'_> {
     fn close_all(&mut self) {
         // The innermost is the one to mend; those around it are usually closed once it is.
         if let Some((open, span)) = self.open.pop() {
-            self.diagnostics.push(Mistake::OpenBracket(open).at(span));
+            self.doubt(Mistake::OpenBracket(open), span);
         }
         self.open.clear();
     }

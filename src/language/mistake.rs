@@ -43,6 +43,8 @@ pub enum Mistake {
         /// The statement that may be meant.
         meant: Option<String>,
     },
+    /// `n = 13` without the word that says what it is.
+    BareDefinition(String),
     /// A line that begins with no word at all.
     NotAStatement(String),
     /// Something else stands where a certain thing is needed.
@@ -60,6 +62,8 @@ pub enum Mistake {
     ChainedComparison,
     /// `=` where a comparison is meant.
     AssignmentInExpression,
+    /// `i = 1..n`
+    IndexByAssignment(String),
     /// An `if` without `else`.
     MissingElse,
     /// No kind of symmetry has this name.
@@ -94,9 +98,10 @@ impl Mistake {
                 "the file is not text".into(),
                 some("a problem file is plain text in UTF-8; this one has other bytes from here on"),
             ),
-            Mistake::UnknownCharacter(character) => {
-                (format!("the character {character:?} has no meaning here"), some("remove it"))
-            }
+            Mistake::UnknownCharacter(character) => (
+                format!("the character {character:?} has no meaning here"),
+                some(if *character == ';' { "a statement ends with its line" } else { "remove it" }),
+            ),
             Mistake::FancyCharacter(character, plain) => {
                 (format!("`{character}` is not a sign of the language"), Some(format!("write `{plain}`")))
             }
@@ -108,7 +113,7 @@ impl Mistake {
             }
             Mistake::BadNumber(text) => (
                 format!("`{text}` is not a number"),
-                some("numbers look like 12, 2.5 or 1e-3; names begin with a letter"),
+                product(text).or_else(|| some("numbers look like 12, 2.5 or 1e-3; names do not begin with a digit")),
             ),
             Mistake::HugeNumber(text) => {
                 (format!("{text} is too large"), some("numbers go up to about 1.8e308; `inf` is infinity"))
@@ -116,9 +121,10 @@ impl Mistake {
             Mistake::OpenBracket(open) => (format!("`{open}` is not closed"), None),
             Mistake::StrayBracket(close) => (format!("`{close}` closes nothing"), None),
             Mistake::CrossedBrackets { open, close, .. } => (format!("`{close}` cannot close `{open}`"), None),
-            Mistake::TooDeep(limit) => {
-                (format!("nested more than {limit} deep"), some("name the inner parts with `let`"))
-            }
+            Mistake::TooDeep(limit) => (
+                format!("nested more than {limit} deep"),
+                some("name the inner parts with `let`, or reduce a list by `sum`"),
+            ),
             Mistake::NoStatement => (
                 "the file says nothing".into(),
                 some(
@@ -130,6 +136,10 @@ impl Mistake {
                 meant(guess).or_else(|| {
                     some("statements begin with title, given, unknown, let, require, minimise, maximise, alike or show")
                 }),
+            ),
+            Mistake::BareDefinition(word) => (
+                format!("`{word}` begins no statement"),
+                some("a definition begins with `given` (a constant), `unknown` or `let` (a formula)"),
             ),
             Mistake::NotAStatement(found) => (
                 format!("a statement cannot begin with {found}"),
@@ -145,6 +155,10 @@ impl Mistake {
             }
             Mistake::ChainedComparison => ("comparisons cannot be chained".into(), some("write `a < b and b < c`")),
             Mistake::AssignmentInExpression => ("`=` defines and does not compare".into(), some("write `==`")),
+            Mistake::IndexByAssignment(name) => (
+                "an index is not assigned".into(),
+                Some(format!("write `{name} in` and its range, as in `{name} in 1..n`")),
+            ),
             Mistake::MissingElse => {
                 ("this `if` has no `else`".into(), some("an `if` is a value: say what it is otherwise"))
             }
@@ -155,4 +169,12 @@ impl Mistake {
             Mistake::RepeatedWord(word) => (format!("`{word}` stands twice"), some("remove one")),
         }
     }
+}
+
+/// `2*x` for `2x`; nothing where an exponent or separated digits may be meant.
+fn product(text: &str) -> Option<String> {
+    let (number, name) = text.split_at(text.find(|letter: char| !(letter.is_ascii_digit() || letter == '.'))?);
+    let is_exponent = name.strip_prefix(['e', 'E']).is_some_and(|rest| !rest.starts_with(char::is_alphabetic));
+    let is_name = name.starts_with(char::is_alphabetic) && !name.contains('.');
+    (number.parse::<f64>().is_ok() && is_name && !is_exponent).then(|| format!("write `{number}*{name}`"))
 }

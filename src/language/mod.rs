@@ -13,11 +13,13 @@ mod lexer;
 pub mod mistake;
 mod parse;
 mod parser;
+mod print;
 mod render;
 mod suggest;
 mod token;
 pub mod tree;
 
 pub use parse::{Parsed, decode, parse};
+pub use print::print;
 pub use render::render;
 pub use suggest::suggest;

@@ -40,9 +40,8 @@ pub fn decode(bytes: &[u8]) -> Result<String, (String, Diagnostic)> {
 /// ```
 pub fn parse(text: &str) -> Parsed {
     let mut diagnostics = Vec::new();
-    let tokens = lex(text, &mut diagnostics);
-    // Spans of 32 bits and a parser that recurses: both limits are told by the lexer's own mistakes.
-    let file = parse_tokens(&tokens, &mut diagnostics);
+    let lexed = lex(text, &mut diagnostics);
+    let file = parse_tokens(&lexed, &mut diagnostics);
     if file.statements.is_empty() && diagnostics.is_empty() {
         diagnostics.push(Mistake::NoStatement.at(Span::default()));
     }

@@ -6,9 +6,6 @@ use super::super::token::{Sign, TokenKind};
 use super::super::tree::{Arithmetic, Comparison, Expression, ExpressionKind, Name, Reduction};
 use super::{Parsed, Parser, RESERVED};
 
-/// The most operators in a row. A longer sum was written by a program, which can write a list and a `sum` over it.
-const MAX_LINKS: usize = 2000;
-
 const REDUCTIONS: [(&str, Reduction); 4] = [
     ("sum", Reduction::Sum),
     ("product", Reduction::Product),
@@ -25,39 +22,39 @@ impl Parser<'_> {
         self.deeper(|parser| if parser.is_word("if") { parser.conditional() } else { parser.disjunction() })
     }
 
-    /// Counts a link of a chain such as `a + b + c`, whose tree is as deep as the chain is long.
-    fn link(&mut self, links: &mut usize) -> Parsed<()> {
-        *links += 1;
-        if *links > MAX_LINKS {
-            return self.refuse(Mistake::TooDeep(MAX_LINKS), self.span());
-        }
-        Ok(())
-    }
-
     fn conditional(&mut self) -> Parsed<Expression> {
         let start = self.span();
         self.need_word("if", "`if`")?;
         let condition = Box::new(self.expression()?);
+        let height = self.height;
+        self.go_on_at("then");
         self.need_word("then", "`then`")?;
         let then = Box::new(self.expression()?);
-        // The `else` may stand on the next line: nothing else can begin with it.
-        if self.kind() == &TokenKind::LineEnd && matches!(self.ahead(1), TokenKind::Word(word) if word == "else") {
-            self.place += 1;
-        }
+        let height = height.max(self.height);
+        self.go_on_at("else");
         if !self.take_word("else") {
             return self.refuse(Mistake::MissingElse, start);
         }
         let otherwise = Box::new(self.expression()?);
+        self.grow(height)?;
         let end = otherwise.span;
         Ok(node(start, end, ExpressionKind::If { condition, then, otherwise }))
     }
 
+    /// Passes line ends before `then` or `else`: nothing else can begin with these.
+    fn go_on_at(&mut self, word: &str) {
+        let n_ends = self.tokens[self.place..].iter().take_while(|token| token.kind == TokenKind::LineEnd).count();
+        if matches!(self.ahead(n_ends), TokenKind::Word(found) if found == word) {
+            self.place += n_ends;
+        }
+    }
+
     fn disjunction(&mut self) -> Parsed<Expression> {
         let mut left = self.conjunction()?;
-        let mut links = 0;
+        let mut height = self.height;
         while self.take_word("or") {
-            self.link(&mut links)?;
             let right = self.conjunction()?;
+            height = self.grow(height)?;
             left = node(left.span, right.span, ExpressionKind::Or(Box::new(left), Box::new(right)));
         }
         Ok(left)
@@ -65,10 +62,10 @@ impl Parser<'_> {
 
     fn conjunction(&mut self) -> Parsed<Expression> {
         let mut left = self.negation()?;
-        let mut links = 0;
+        let mut height = self.height;
         while self.take_word("and") {
-            self.link(&mut links)?;
             let right = self.negation()?;
+            height = self.grow(height)?;
             left = node(left.span, right.span, ExpressionKind::And(Box::new(left), Box::new(right)));
         }
         Ok(left)
@@ -78,6 +75,7 @@ impl Parser<'_> {
         let start = self.span();
         if self.take_word("not") {
             let inner = self.deeper(Self::negation)?;
+            self.grow(0)?;
             return Ok(node(start, inner.span, ExpressionKind::Not(Box::new(inner))));
         }
         self.comparison()
@@ -85,10 +83,16 @@ impl Parser<'_> {
 
     fn comparison(&mut self) -> Parsed<Expression> {
         let left = self.sum()?;
+        let height = self.height;
+        if self.is_sign(Sign::Assign) {
+            // Every `=` that defines has been taken before a formula begins.
+            return self.refuse(Mistake::AssignmentInExpression, self.span());
+        }
         let Some(operator) = self.comparison_sign() else { return Ok(left) };
         self.place += 1;
         let right = self.sum()?;
-        if self.comparison_sign().is_some() {
+        self.grow(height)?;
+        if self.comparison_sign().is_some() || self.is_sign(Sign::Assign) {
             return self.refuse(Mistake::ChainedComparison, left.span.to(self.span()));
         }
         let (start, end) = (left.span, right.span);
@@ -110,9 +114,8 @@ impl Parser<'_> {
 
     fn sum(&mut self) -> Parsed<Expression> {
         let mut left = self.term()?;
-        let mut links = 0;
+        let mut height = self.height;
         loop {
-            self.link(&mut links)?;
             let operator = match self.kind() {
                 TokenKind::Sign(Sign::Plus) => Arithmetic::Add,
                 TokenKind::Sign(Sign::Minus) => Arithmetic::Subtract,
@@ -120,15 +123,15 @@ impl Parser<'_> {
             };
             self.place += 1;
             let right = self.term()?;
+            height = self.grow(height)?;
             left = arithmetic(operator, left, right);
         }
     }
 
     fn term(&mut self) -> Parsed<Expression> {
         let mut left = self.signed()?;
-        let mut links = 0;
+        let mut height = self.height;
         loop {
-            self.link(&mut links)?;
             let operator = match self.kind() {
                 TokenKind::Sign(Sign::Times) => Arithmetic::Multiply,
                 TokenKind::Sign(Sign::Over) => Arithmetic::Divide,
@@ -136,6 +139,7 @@ impl Parser<'_> {
             };
             self.place += 1;
             let right = self.signed()?;
+            height = self.grow(height)?;
             left = arithmetic(operator, left, right);
         }
     }
@@ -145,6 +149,7 @@ impl Parser<'_> {
         let start = self.span();
         if self.take_sign(Sign::Minus) {
             let inner = self.deeper(Self::signed)?;
+            self.grow(0)?;
             return Ok(node(start, inner.span, ExpressionKind::Negate(Box::new(inner))));
         }
         if self.take_sign(Sign::Plus) {
@@ -159,16 +164,18 @@ impl Parser<'_> {
             return Ok(base);
         }
         // Right associative, and `2^-x` is allowed: the exponent is a signed operand, which is a power again.
+        let height = self.height;
         let exponent = self.deeper(Self::signed)?;
+        self.grow(height)?;
         Ok(arithmetic(Arithmetic::Power, base, exponent))
     }
 
     fn indexed(&mut self) -> Parsed<Expression> {
         let mut base = self.primary()?;
-        let mut links = 0;
+        let mut height = self.height;
         while self.take_sign(Sign::OpenSquare) {
-            self.link(&mut links)?;
-            let indices = self.list(Sign::CloseSquare, "`,` or `]`", Self::expression)?;
+            let indices = self.some(Sign::CloseSquare, "`,` or `]`", "an index", Self::expression)?;
+            height = self.grow(height)?;
             let start = base.span;
             base = node(start, self.last_span(), ExpressionKind::Index { base: Box::new(base), indices });
         }
@@ -181,20 +188,19 @@ impl Parser<'_> {
             TokenKind::Number(number) => {
                 let number = *number;
                 self.place += 1;
+                self.height = 1;
                 Ok(node(start, start, ExpressionKind::Number(number)))
             }
             TokenKind::Sign(Sign::OpenRound) => {
                 self.place += 1;
                 let inner = self.expression()?;
-                if self.is_sign(Sign::Assign) {
-                    return self.refuse(Mistake::AssignmentInExpression, self.span());
-                }
                 self.need_sign(Sign::CloseRound, "`)`")?;
                 Ok(node(start, self.last_span(), inner.kind))
             }
             TokenKind::Sign(Sign::OpenSquare) => {
                 self.place += 1;
                 let items = self.list(Sign::CloseSquare, "`,` or `]`", Self::expression)?;
+                self.grow(0)?;
                 Ok(node(start, self.last_span(), ExpressionKind::List(items)))
             }
             TokenKind::Word(word) if word == "if" => self.deeper(Self::conditional),
@@ -207,6 +213,7 @@ impl Parser<'_> {
     fn named(&mut self) -> Parsed<Expression> {
         let name: Name = self.name("a name")?;
         let start = name.span;
+        self.height = 1;
         if self.take_sign(Sign::Dot) {
             let column = self.name("the name of a column")?;
             let end = column.span;
@@ -218,13 +225,16 @@ impl Parser<'_> {
         let reduction = REDUCTIONS.iter().find(|entry| entry.0 == name.text);
         if let (Some(&(_, operator)), true) = (reduction, self.at_binder()) {
             let (indices, condition) = self.deeper(Self::binders_and_condition)?;
+            let height = self.height;
             let condition = condition.map(Box::new);
             let body = Box::new(self.expression()?);
+            self.grow(height)?;
             self.need_sign(Sign::CloseRound, "`)`")?;
             let kind = ExpressionKind::Reduce { operator, word: start, indices, condition, body };
             return Ok(node(start, self.last_span(), kind));
         }
         let arguments = self.list(Sign::CloseRound, "`,` or `)`", Self::expression)?;
+        self.grow(0)?;
         Ok(node(start, self.last_span(), ExpressionKind::Call { name, arguments }))
     }
 }

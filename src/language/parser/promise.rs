@@ -45,7 +45,7 @@ impl Parser<'_> {
         };
         self.place += 1;
         let operands = if self.take_sign(Sign::OpenRound) {
-            self.list(Sign::CloseRound, "`,` or `)`", Self::operand)?
+            self.some(Sign::CloseRound, "`,` or `)`", "the name of an unknown", Self::operand)?
         } else {
             vec![self.operand()?]
         };

@@ -11,6 +11,26 @@ use super::super::tree::{
 };
 use super::{Parsed, Parser};
 
+/// Words that other notations have for our statements, too far from them for a count of letters.
+const ELSEWHERE: [(&str, &str); 16] = [
+    ("var", "unknown"),
+    ("variable", "unknown"),
+    ("variables", "unknown"),
+    ("const", "given"),
+    ("constant", "given"),
+    ("param", "given"),
+    ("parameter", "given"),
+    ("data", "given"),
+    ("def", "let"),
+    ("define", "let"),
+    ("function", "let"),
+    ("constraint", "require"),
+    ("subject", "require"),
+    ("objective", "minimise"),
+    ("symmetry", "alike"),
+    ("print", "show"),
+];
+
 impl Parser<'_> {
     pub(super) fn statement(&mut self) -> Parsed<Statement> {
         let start = self.span();
@@ -29,20 +49,30 @@ impl Parser<'_> {
             "minimise" | "minimize" | "maximise" | "maximize" => self.objective(start, word.starts_with("max")),
             "alike" => self.alike(),
             "show" => self.show(),
-            _ => {
-                let meant = suggest(&word, STATEMENT_WORDS);
-                self.refuse(Mistake::UnknownStatement { word, meant }, start)
-            }
+            _ => self.no_statement(word, start),
         }?;
         let span = start.to(self.last_span());
         match self.kind() {
             TokenKind::LineEnd => Ok(Statement { span, kind }),
-            TokenKind::Sign(Sign::Assign) => self.refuse(Mistake::AssignmentInExpression, self.span()),
             found => {
                 let found = found.to_string();
                 self.refuse(Mistake::Trailing(found), self.span())
             }
         }
+    }
+
+    /// What may have been meant by a line that begins with none of the words.
+    fn no_statement<T>(&mut self, word: String, start: Span) -> Parsed<T> {
+        if self.is_sign(Sign::Assign) {
+            return self.refuse(Mistake::BareDefinition(word), start);
+        }
+        let other = ELSEWHERE.iter().find(|entry| entry.0 == word.to_lowercase());
+        let meant = suggest(&word, STATEMENT_WORDS).or_else(|| other.map(|entry| entry.1.to_string()));
+        let line = self.tokens[self.place..].iter().take_while(|token| token.kind != TokenKind::LineEnd);
+        if meant.is_none() && line.take(50).any(|token| token.kind == TokenKind::Sign(Sign::Assign)) {
+            return self.refuse(Mistake::BareDefinition(word), start);
+        }
+        self.refuse(Mistake::UnknownStatement { word, meant }, start)
     }
 
     fn title(&mut self) -> Parsed<StatementKind> {
@@ -79,7 +109,7 @@ impl Parser<'_> {
     fn unknown(&mut self) -> Parsed<StatementKind> {
         let name = self.name("a name")?;
         let axes = if self.take_sign(Sign::OpenSquare) {
-            self.list(Sign::CloseSquare, "`,` or `]`", Self::axis)?
+            self.some(Sign::CloseSquare, "`,` or `]`", "a count or a range", Self::axis)?
         } else {
             Vec::new()
         };
@@ -112,7 +142,7 @@ impl Parser<'_> {
         if !self.take_sign(Sign::OpenCurly) {
             return Ok(Domain::Interval(self.interval()?));
         }
-        let items = self.list(Sign::CloseCurly, "`,` or `}`", |parser| {
+        let items = self.some(Sign::CloseCurly, "`,` or `}`", "a value or a range", |parser| {
             let first = parser.expression()?;
             if parser.take_sign(Sign::Range) {
                 return Ok(Choice::Range(first, parser.expression()?));
@@ -139,7 +169,12 @@ impl Parser<'_> {
                 self.list(Sign::CloseRound, "`,` or `)`", |parser| parser.name("the name of a parameter"))?,
             )
         } else if self.take_sign(Sign::OpenSquare) {
-            LetForm::Family(self.list(Sign::CloseSquare, "`,` or `]`", Self::family_index)?)
+            LetForm::Family(self.some(
+                Sign::CloseSquare,
+                "`,` or `]`",
+                "an index, as in `i in 1..n`",
+                Self::family_index,
+            )?)
         } else {
             LetForm::Value
         };
@@ -164,9 +199,8 @@ impl Parser<'_> {
     }
 
     fn objective(&mut self, word: Span, maximise: bool) -> Parsed<StatementKind> {
-        // `minimise: e` is a common slip, and harmless.
         if self.is_sign(Sign::Colon) {
-            return self.expected("the objective");
+            return self.expected("the objective, without a colon");
         }
         Ok(StatementKind::Objective { maximise, word, value: self.expression()? })
     }
@@ -180,7 +214,7 @@ impl Parser<'_> {
 
     fn optional_binders(&mut self) -> Parsed<Vec<Binder>> {
         if self.take_sign(Sign::OpenSquare) {
-            self.list(Sign::CloseSquare, "`,` or `]`", Self::binder)
+            self.some(Sign::CloseSquare, "`,` or `]`", "an index, as in `i in 1..n`", Self::binder)
         } else {
             Ok(Vec::new())
         }
@@ -189,25 +223,45 @@ impl Parser<'_> {
     /// `i in 1..n, j in i+1..n if c:` up to and with the colon.
     pub(super) fn binders_and_condition(&mut self) -> Parsed<(Vec<Binder>, Option<Expression>)> {
         let mut indices = vec![self.binder()?];
+        let mut height = self.height;
         while self.take_sign(Sign::Comma) {
             indices.push(self.binder()?);
+            height = height.max(self.height);
         }
         let condition = if self.take_word("if") { Some(self.expression()?) } else { None };
+        self.height = height.max(self.height);
         self.need_sign(Sign::Colon, "`:` after the ranges")?;
         Ok((indices, condition))
     }
 
-    /// Whether `name in` comes next.
+    /// Whether `name in` comes next, or `name = first..last`, which is a slip for it.
     pub(super) fn at_binder(&self) -> bool {
-        matches!(self.kind(), TokenKind::Word(_)) && matches!(self.ahead(1), TokenKind::Word(word) if word == "in")
+        if !matches!(self.kind(), TokenKind::Word(_)) {
+            return false;
+        }
+        match self.ahead(1) {
+            TokenKind::Word(word) => word == "in",
+            TokenKind::Sign(Sign::Assign) => {
+                let item = self.tokens[self.place..].iter().map(|token| &token.kind).take_while(|kind| {
+                    !matches!(kind, TokenKind::LineEnd | TokenKind::Sign(Sign::Comma | Sign::Colon | Sign::CloseSquare))
+                });
+                item.take(50).any(|kind| kind == &TokenKind::Sign(Sign::Range))
+            }
+            _ => false,
+        }
     }
 
     pub(super) fn binder(&mut self) -> Parsed<Binder> {
         let name: Name = self.name("an index, as in `i in 1..n`")?;
+        if self.is_sign(Sign::Assign) {
+            return self.refuse(Mistake::IndexByAssignment(name.text), self.span());
+        }
         self.need_word("in", "`in` and a range")?;
         let first = self.expression()?;
+        let height = self.height;
         self.need_sign(Sign::Range, "`..` and the last value")?;
         let last = self.expression()?;
+        self.height = height.max(self.height);
         Ok(Binder { name, first, last })
     }
 }
