@@ -292,8 +292,8 @@ impl Mistake {
                 Some(format!("the limit is {limit:.0e}; are the ranges right?")),
             ),
             Mistake::TooIntricate => (
-                "the formulas grow beyond measure here when functions are written out".into(),
-                some("name a value that is used twice by `let`, and let definitions lean on fewer others in a row"),
+                "this formula is too long or too deep once the functions in it are written out".into(),
+                some("write a long sum as a list and a `sum` over it, and name by `let` what is used twice"),
             ),
             Mistake::NotYet(what) => (format!("{what} not available yet in this version"), None),
             Mistake::PromiseNeedsUnknown(name) => {

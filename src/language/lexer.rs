@@ -15,6 +15,10 @@ pub const STATEMENT_WORDS: [&str; 11] =
 /// Brackets nested deeper than this are refused, so that no later stage runs out of stack.
 pub const MAX_DEPTH: usize = 200;
 
+/// Longer names are refused: messages repeat names, and the search for what a misspelt one meant takes the square of
+/// its length.
+pub const MAX_LETTERS: usize = 200;
+
 /// Characters that word processors and papers use, with what the language has for them.
 const FANCY: &[(char, &str)] = &[
     ('−', "-"),
@@ -173,6 +177,12 @@ impl Lexer<'_> {
                 self.close_all();
                 self.push(TokenKind::LineEnd, start, start);
             }
+        }
+        let letters = word.chars().count();
+        if letters > MAX_LETTERS {
+            let kept: String = word.chars().take(MAX_LETTERS).collect();
+            self.refuse(Mistake::LongName(letters), start, self.place);
+            return self.push(TokenKind::Word(kept), start, self.place);
         }
         // What a reader of mathematics expects.
         let word = if word == "π" { "pi".to_string() } else { word.to_string() };

@@ -19,6 +19,8 @@ pub enum Mistake {
     BadNumber(String),
     /// A number too large for a 64-bit float.
     HugeNumber(String),
+    /// A name longer than any reader would follow.
+    LongName(usize),
     /// A bracket that nothing closes.
     OpenBracket(char),
     /// A closing bracket without its opening one.
@@ -114,6 +116,10 @@ impl Mistake {
             Mistake::BadNumber(text) => (
                 format!("`{text}` is not a number"),
                 product(text).or_else(|| some("numbers look like 12, 2.5 or 1e-3; names do not begin with a digit")),
+            ),
+            Mistake::LongName(letters) => (
+                format!("this name has {letters} letters"),
+                Some(format!("names have at most {}", super::lexer::MAX_LETTERS)),
             ),
             Mistake::HugeNumber(text) => {
                 (format!("{text} is too large"), some("numbers go up to about 1.8e308; `inf` is infinity"))

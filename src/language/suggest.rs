@@ -1,5 +1,7 @@
 //! What a misspelt word may have meant.
 
+use super::lexer::MAX_LETTERS;
+
 /// The candidate nearest to a word, if one is near: at most a third of the word's letters changed, two swapped
 /// neighbours counting as one change (restricted edit distance, Damerau 1964). Ties go to the first candidate.
 ///
@@ -10,6 +12,9 @@
 /// ```
 pub fn suggest<'a>(word: &str, candidates: impl IntoIterator<Item = &'a str>) -> Option<String> {
     let letters: Vec<char> = word.chars().collect();
+    if letters.len() > MAX_LETTERS {
+        return None;
+    }
     let limit = (letters.len() / 3).max(1);
     let mut best: Option<(usize, &str)> = None;
     for candidate in candidates {

@@ -23,6 +23,20 @@ fn refused(content: impl AsRef<[u8]>) -> String {
     ran.err
 }
 
+/// Names as long as a book: neither a hang in the search for what was meant, nor a flood of letters.
+#[test]
+fn endless_names_are_refused_within_a_second() {
+    let (defined, misspelt) = ("a".repeat(100_000), format!("{}b", "a".repeat(99_999)));
+    let err = refused(format!("given {defined} = 1\nunknown x in [-1, 1]\nminimise x^2 + {misspelt}\n"));
+    assert!(err.contains("this name has 100000 letters"), "{err}");
+    let err = refused(format!("unknown x in [-1, 1]\nminimise x^2 + {}\n", "q".repeat(1_000_000)));
+    assert!(err.contains("this name has 1000000 letters"), "{err}");
+    let folder = Folder::new();
+    folder.put("wells.land", WELLS);
+    let ran = folder.run(&["check", "wells.land", "--given", &format!("{}=1", "n".repeat(50_000))]);
+    assert_eq!(ran.status, Some(2), "{}", ran.err.len());
+}
+
 fn usage(arguments: &[&str]) -> String {
     let folder = Folder::new();
     folder.put("wells.land", WELLS);
