@@ -3,7 +3,7 @@
 use super::vectors::{add_scaled, dot};
 
 /// Pairs remembered. More save few evaluations and cost more time than a small landscape's evaluation.
-const MEMORY: usize = 8;
+const MEMORY: usize = 5;
 
 /// The last pairs of step and change, as the inverse of a curvature.
 #[derive(Clone, Debug)]

@@ -100,6 +100,8 @@ pub struct Descent {
     trial_gradient: Vec<f64>,
     /// The trial was cut at a bound.
     cut: bool,
+    /// A bound has been touched since the start, so that slots may have to be held.
+    touched: bool,
     steepest: bool,
     started: bool,
     kind: Option<EndKind>,
@@ -127,6 +129,7 @@ impl Descent {
             trial: vec![0.0; n],
             trial_gradient: vec![0.0; length],
             cut: false,
+            touched: false,
             steepest: true,
             started: false,
             kind: None,
@@ -138,6 +141,8 @@ impl Descent {
         for (slot, x) in self.trial.iter_mut().enumerate() {
             *x = start[slot].max(self.region.lower[slot]).min(self.region.upper[slot]);
         }
+        let touches = |(slot, x): (usize, &f64)| *x <= self.region.lower[slot] || *x >= self.region.upper[slot];
+        self.touched = self.trial.iter().enumerate().any(touches);
         self.evaluations = 0;
         self.history.clear();
         self.started = false;
@@ -309,7 +314,7 @@ impl Descent {
     /// Sets the direction to 0 where a bound holds the slot; says whether one does.
     fn hold(&mut self) -> bool {
         let mut held = false;
-        if self.bounded {
+        if self.bounded && self.touched {
             for slot in 0..self.at.len() {
                 if self.is_held(slot) {
                     self.direction[slot] = 0.0;
@@ -344,6 +349,7 @@ impl Descent {
                 *x = inside;
             }
             self.cut = cut;
+            self.touched |= cut;
         }
     }
 

@@ -109,7 +109,7 @@ impl fmt::Display for Instruction {
     }
 }
 
-struct Shown<'a>(&'a Index);
+pub(super) struct Shown<'a>(pub(super) &'a Index);
 
 impl fmt::Display for Shown<'_> {
     fn fmt(&self, out: &mut fmt::Formatter<'_>) -> fmt::Result {

@@ -56,6 +56,10 @@ impl Checker<'_> {
     /// Everything that nests comes by here, calls and definitions included: so this is where depth and growth are
     /// limited. A chain of functions that each call the next twice doubles with every link.
     pub(super) fn value(&mut self, expression: &Expression) -> Outcome<Value> {
+        self.deeper(expression, Self::understand)
+    }
+
+    fn deeper<T>(&mut self, expression: &Expression, look: fn(&mut Self, &Expression) -> Outcome<T>) -> Outcome<T> {
         self.steps += 1;
         if self.depth >= MAX_DEPTH || self.steps > MAX_STEPS {
             if !std::mem::replace(&mut self.overgrown, true) {
@@ -64,9 +68,9 @@ impl Checker<'_> {
             return Err(super::build::Told);
         }
         self.depth += 1;
-        let value = self.understand(expression);
+        let result = look(self, expression);
         self.depth -= 1;
-        value
+        result
     }
 
     fn understand(&mut self, expression: &Expression) -> Outcome<Value> {
@@ -322,6 +326,10 @@ impl Checker<'_> {
 
     /// An expression that must be a condition.
     pub(super) fn condition(&mut self, expression: &Expression) -> Outcome<Condition> {
+        self.deeper(expression, Self::decide)
+    }
+
+    fn decide(&mut self, expression: &Expression) -> Outcome<Condition> {
         let fold = |parts: [Condition; 2], all: bool| match parts {
             [Condition::Index(a), Condition::Index(b)] => {
                 Condition::Index(if all { IndexCondition::All(vec![a, b]) } else { IndexCondition::Any(vec![a, b]) })

@@ -21,7 +21,7 @@ const MAX_SPREAD: usize = 12;
 /// Point `number` of the additive sequence with the generalised golden ratio of the dimension, shifted at random by
 /// `offsets` (a randomised Kronecker sequence, Weyl 1916; this choice of factors is common practice in quasi-Monte Carlo work).
 ///
-/// The random stream serves where there are more than [`MAX_SPREAD`] unknowns.
+/// The random stream serves where there are more than 12 unknowns.
 pub fn spread(structure: &Structure, number: u64, offsets: &mut impl Rng, rng: &mut impl Rng) -> Vec<f64> {
     let n = structure.n_unknowns();
     if n > MAX_SPREAD {

@@ -16,7 +16,7 @@ use super::structure::Structure;
 use super::task::{Finding, Lost, Proposal, Task, TaskResult, Work};
 
 /// Tasks that a worker has in hand at once.
-const LANES: usize = 16;
+const LANES: usize = 32;
 
 /// Times that a cloud at its bounds is brought back to the middle within one descent.
 const MOST_RECENTRINGS: u32 = 3;

@@ -18,7 +18,7 @@ impl Observer for Patient {
 }
 
 /// Points in a full batch of a worker.
-const BATCH: usize = 16;
+const BATCH: usize = 32;
 
 fn main() {
     for (n, evaluations) in [(13, 1_000_000), (38, 400_000)] {

@@ -1,5 +1,8 @@
 //! The compiled kernel against the plain evaluator of terms, differences, and duals.
 
+use std::fs;
+use std::path::Path;
+
 use super::support::kernel;
 use rand::RngExt;
 use thalweg::base::random::{Purpose, stream};
@@ -233,5 +236,23 @@ fn programs_survive_their_text() {
                 "{name}"
             );
         }
+    }
+}
+
+/// The finished gradient programs of a few problems, as text: a change of a pass shows as a change of these.
+/// `BLESS=1` rewrites them.
+#[test]
+fn programs_are_those_of_the_golden_files() {
+    for name in ["pair energy", "families of families", "product", "choices by indices", "lookups", "least squares"] {
+        let (_, text) = CONSTRUCTS.iter().find(|case| case.0 == name).unwrap();
+        let (_, kernel) = kernel(text);
+        let printed = kernel.gradient.program().to_string();
+        let path =
+            Path::new(env!("CARGO_MANIFEST_DIR")).join(format!("tests/data/kernel/{}.txt", name.replace(' ', "_")));
+        if std::env::var_os("BLESS").is_some() {
+            fs::write(&path, &printed).unwrap();
+        }
+        let expected = fs::read_to_string(&path).unwrap_or_default();
+        assert_eq!(printed, expected, "{name}: BLESS=1 rewrites it");
     }
 }

@@ -107,8 +107,8 @@ pub struct Loop {
     pub others: Vec<Cursor>,
     /// The pointers of both turns side by side, with the rows of two turns.
     pub pair_steps: Vec<(Pointer, isize)>,
-    /// The cursors of the second of two turns side by side.
-    pub second: Vec<Cursor>,
+    /// The pointers of the first and of the second of two turns side by side, and the rows between them.
+    pub second: Vec<(Pointer, Pointer, isize)>,
     /// The operation behind its end.
     pub exit: u32,
     /// The first operation of its body.
@@ -318,10 +318,8 @@ impl Maker<'_> {
                             _ => scope.others.push(cursor.clone()),
                         }
                     }
-                    for cursor in scope.cursors.iter().chain(&scope.second).filter(|_| scope.pair.is_some()) {
-                        if let (Moves::Pointer(pointer, _), Some(stride)) = (cursor.moves, cursor.stride) {
-                            scope.pair_steps.push((pointer, 2 * stride as isize));
-                        }
+                    for &(first, second, rows) in &scope.second {
+                        scope.pair_steps.extend([(first, 2 * rows), (second, 2 * rows)]);
                     }
                     self.put(Kind::End, 0, [0; 4], number as u32);
                     self.code.loops[number].exit = self.here();
@@ -361,7 +359,6 @@ impl Maker<'_> {
             }
         }
         if plain_cursors && can_pair(&single, &temporary, &standing) {
-            let depth = self.open.len() as u32 - 1;
             let mut renamed = BTreeMap::new();
             for pointer in temporary {
                 self.code.rows += 1;
@@ -369,20 +366,11 @@ impl Maker<'_> {
                 renamed.insert(pointer, self.new_pointer(row)?);
             }
             for cursor in self.code.loops[number].cursors.clone() {
-                let (Moves::Pointer(pointer, first), Some(stride), Index::Affine(row)) =
-                    (cursor.moves, cursor.stride, &cursor.index)
-                else {
-                    continue;
-                };
+                let (Moves::Pointer(pointer, first), Some(stride)) = (cursor.moves, cursor.stride) else { continue };
                 let other = self.new_pointer(first)?;
                 renamed.insert(pointer, other);
-                // The place one turn on.
-                let next = row.plus(&Affine::constant(1), stride)?;
-                let second =
-                    Cursor { moves: Moves::Pointer(other, first), index: Index::Affine(next), stride: Some(stride) };
-                self.code.loops[number].second.push(second);
+                self.code.loops[number].second.push((pointer, other, stride as isize));
             }
-            debug_assert_eq!(depth as usize, self.code.loops[number].depth);
             let rename = |pointer: Pointer| renamed.get(&pointer).copied().unwrap_or(pointer);
             self.code.loops[number].pair = Some(self.here());
             let renamed: Vec<Operation> = single.iter().map(|operation| operation.with_pointers(rename)).collect();

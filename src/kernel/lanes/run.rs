@@ -145,18 +145,21 @@ unsafe fn interpret<const K: usize, const C: usize>(run: Run<'_>) {
         // Does something for the operation and, where the next is its twin, for that too: one dispatch for both.
         macro_rules! each {
             (|$operation:ident, $to:ident, [$a:ident, $b:ident, $c:ident, $d:ident]| $body:expr) => {{
-                let does = |$operation: &Operation| {
+                // A loop and no closure: a closure called twice becomes a function of its own, without this build's
+                // vector instructions.
+                let mut $operation: &Operation = operation;
+                loop {
                     let $to = at($operation.to);
                     let [$a, $b, $c, $d] = $operation.from.map(at);
                     let _ = ($a, $b, $c, $d);
                     // SAFETY: rows are disjoint or the same, and operands are read, chunk by chunk, before the result is
                     // written; so an operation may write a row that it reads.
-                    unsafe { $body }
-                };
-                does(operation);
-                if operation.twin {
+                    unsafe { $body };
+                    if !$operation.twin {
+                        break;
+                    }
                     // SAFETY: a twin is followed by its other half.
-                    does(unsafe { &*operations.add(place) });
+                    $operation = unsafe { &*operations.add(place) };
                     place += 1;
                 }
             }};
@@ -294,8 +297,9 @@ unsafe fn interpret<const K: usize, const C: usize>(run: Run<'_>) {
                 if let Some(pair) = scope.pair
                     && last > first
                 {
-                    for cursor in &scope.second {
-                        set::<K>(cursor, memory, state, &program.lookups);
+                    for &(first, second, rows) in &scope.second {
+                        state.pointers[second as usize] =
+                            state.pointers[first as usize].wrapping_offset(rows * K as isize);
                     }
                     place = pair as usize;
                 }
