@@ -6,4 +6,5 @@
 
 pub mod algebra;
 pub mod functions;
+pub mod interval;
 pub mod operation;

@@ -40,7 +40,7 @@ const FAR: [f64; 15] = [
     -1.5699260294957462e-06,
 ];
 
-/// The error function, within 2 ulp.
+/// The error function, within 3 ulp (2.24 seen, just below 1).
 #[inline(always)]
 pub fn error_function(x: f64) -> f64 {
     const TWO_OVER_ROOT_PI: f64 = std::f64::consts::FRAC_2_SQRT_PI;

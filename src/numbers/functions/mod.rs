@@ -26,6 +26,7 @@ pub use error_function::error_function;
 pub use exponential::exponential;
 pub use hyperbolic::{hyperbolic_cosine, hyperbolic_sine, hyperbolic_tangent};
 pub use logarithm::{logarithm, logarithm_10};
+pub(in crate::numbers) use pair::{two_product, two_sum};
 pub use power::{Step, hypotenuse, power, power_steps, real_power};
 
 /// The value of an operation of one operand.
