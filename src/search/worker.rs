@@ -3,23 +3,26 @@
 use std::sync::Arc;
 use std::sync::mpsc::Sender;
 
-use crate::base::random::{Purpose, stream};
-use crate::descent::{Ask, Confirmation, Descent, EndKind, Judgement, Progress, Region};
+use crate::descent::{Ask, Confirmation, Descent, End, EndKind, Judgement, Progress, Region};
 use crate::evaluate::Evaluator;
 use crate::kernel::Kernel;
 use crate::ledger::{Candidate, Confirmed, Identity, Kind};
 
+use super::anneal::Annealing;
 use super::crew::Queue;
-use super::settings::Heuristic;
-use super::start;
+use super::moves::Filling;
+use super::start::{self, Beginning};
 use super::structure::Structure;
-use super::task::{Finding, Lost, Proposal, Task, TaskResult, Work};
+use super::task::{Finding, Lost, Task, TaskResult, Work};
 
 /// Tasks that a worker has in hand at once.
 const LANES: usize = 32;
 
 /// Times that a cloud at its bounds is brought back to the middle within one descent.
 const MOST_RECENTRINGS: u32 = 3;
+
+/// Times that empty places are filled within one task.
+const MOST_FILLINGS: u32 = 6;
 
 /// Saddles that one confirmation may leave.
 const MOST_SADDLES: u64 = 8;
@@ -71,8 +74,24 @@ struct Job {
     first_outside: Option<Vec<f64>>,
     recentrings: u32,
     saddles: u64,
+    /// What asks for values instead of the descent.
+    stage: Stage,
+    /// Fillings tried, and those that moved a point.
+    fillings: (u32, u32),
+    /// The lower end of the descents so far, where a filling led to another.
+    best: Option<End>,
     /// The confirmation under way; `None` while the descent is.
     confirmation: Option<Confirmation>,
+}
+
+/// What a task does besides descending: it asks for values only.
+enum Stage {
+    /// Nothing.
+    None,
+    /// It anneals before the descent.
+    Chain(Box<Annealing>),
+    /// It fills empty places after a descent.
+    Filling(Box<Filling>),
 }
 
 impl<'a> Worker<'a> {
@@ -120,11 +139,14 @@ impl<'a> Worker<'a> {
     fn begin(&mut self, task: Task, clearings: u64) {
         let Some(bench) = self.benches.iter_mut().find(|bench| bench.job.is_none()) else { return };
         let shop = self.shop;
+        let mut stage = Stage::None;
         let confirmation = match &task.work {
             Work::Confirm { at, .. } => Some(Confirmation::new(&shop.region, at)),
             Work::Descend { heuristic, proposal, .. } => {
-                let start = make_start(shop, &task, *heuristic, proposal);
-                bench.descent.start(&start);
+                match start::begin(&shop.structure, shop.seed, &task, *heuristic, proposal) {
+                    Beginning::Descent(start) => bench.descent.start(&start),
+                    Beginning::Chain(chain) => stage = Stage::Chain(chain),
+                }
                 None
             }
         };
@@ -136,6 +158,9 @@ impl<'a> Worker<'a> {
             first_outside: None,
             recentrings: 0,
             saddles: 0,
+            stage,
+            fillings: (0, 0),
+            best: None,
             confirmation,
         });
     }
@@ -169,6 +194,11 @@ impl<'a> Worker<'a> {
         let benches = &self.benches;
         let point = |k: usize| {
             let bench: &Bench = &benches[asked[k]];
+            match bench.job.as_ref().map(|job| &job.stage) {
+                Some(Stage::Chain(chain)) => return chain.ask(),
+                Some(Stage::Filling(filling)) => return filling.ask(),
+                _ => {}
+            }
             match bench.job.as_ref().and_then(|job| job.confirmation.as_ref()).map(Confirmation::ask) {
                 Some(Ask::Gradient(at)) => at,
                 _ => bench.descent.ask(),
@@ -184,8 +214,16 @@ impl<'a> Worker<'a> {
             if !value.is_finite() {
                 job.outside += 1;
                 if job.first_outside.is_none() {
-                    job.first_outside = Some(bench.descent.ask().to_vec());
+                    let at = match &job.stage {
+                        Stage::Chain(chain) => chain.ask(),
+                        Stage::Filling(filling) => filling.ask(),
+                        Stage::None => bench.descent.ask(),
+                    };
+                    job.first_outside = Some(at.to_vec());
                 }
+            }
+            if job.tell_stage(value, &mut bench.descent, shop) {
+                continue;
             }
             match &mut job.confirmation {
                 Some(confirmation) => confirmation.tell_gradient(value, &self.gradient),
@@ -205,11 +243,11 @@ impl<'a> Worker<'a> {
         let job = bench.job.as_mut()?;
         let finding = match (&job.task.work, &job.confirmation) {
             (Work::Descend { heuristic, mark, .. }, _) => {
-                if !bench.descent.has_ended() {
+                if !matches!(job.stage, Stage::None) || !bench.descent.has_ended() {
                     return None;
                 }
                 let (heuristic, mark) = (*heuristic, *mark);
-                let end = bench.descent.end();
+                let end = job.best.take().unwrap_or_else(|| bench.descent.end());
                 let met = |kinked| {
                     let candidate = Candidate::new(&shop.identity, end.value, end.at.clone().into(), kinked);
                     Finding::Met { heuristic, mark, candidate }
@@ -267,6 +305,7 @@ impl<'a> Worker<'a> {
             evaluations: job.evaluations,
             outside: job.outside,
             first_outside: job.first_outside,
+            fillings: job.fillings,
             finding,
         })
     }
@@ -280,32 +319,53 @@ impl Job {
         }
     }
 
-    /// A cloud that drifted against its box is put back into the middle, and goes on.
+    /// A value for a chain or a filling, if there is one; their ends start a descent.
+    fn tell_stage(&mut self, value: f64, descent: &mut Descent, shop: &Workshop) -> bool {
+        match &mut self.stage {
+            Stage::None => return false,
+            Stage::Chain(chain) => {
+                chain.tell(&shop.structure, value);
+                if chain.has_ended() {
+                    descent.start(chain.result());
+                    self.stage = Stage::None;
+                }
+            }
+            Stage::Filling(filling) => {
+                filling.tell(value);
+                if filling.has_ended() {
+                    if let Some(at) = filling.result() {
+                        self.fillings.1 += 1;
+                        descent.start(at);
+                    }
+                    self.stage = Stage::None;
+                }
+            }
+        }
+        true
+    }
+
+    /// A cloud that drifted against its box is put back into the middle, and goes on; then its empty places are filled.
     fn descent_ended(&mut self, descent: &mut Descent, shop: &Workshop) {
         let end = descent.end();
-        if end.kind != EndKind::Converged || self.recentrings >= MOST_RECENTRINGS {
-            return;
-        }
-        if let Some(moved) = shop.region.recentre(&end.at) {
+        if end.kind == EndKind::Converged
+            && self.recentrings < MOST_RECENTRINGS
+            && let Some(moved) = shop.region.recentre(&end.at)
+        {
             self.recentrings += 1;
             descent.start(&moved);
+            return;
         }
-    }
-}
-
-/// The start of a task, from its own random stream.
-fn make_start(shop: &Workshop, task: &Task, heuristic: Heuristic, proposal: &Proposal) -> Vec<f64> {
-    let purpose = if heuristic == Heuristic::Survey { Purpose::Survey } else { Purpose::Task };
-    let mut rng = stream(shop.seed, task.round, task.number, purpose);
-    let structure = &shop.structure;
-    match proposal {
-        Proposal::Point(at) => at.to_vec(),
-        Proposal::Uniform => start::uniform(structure, &mut rng),
-        Proposal::Spread(number) => {
-            // The same offsets for all points of the sequence.
-            let mut offsets = stream(shop.seed, u64::MAX, 0, Purpose::Task);
-            start::spread(structure, *number, &mut offsets, &mut rng)
+        let Work::Descend { fill: true, .. } = self.task.work else { return };
+        let lower = end.kind == EndKind::Converged && self.best.as_ref().is_none_or(|best| end.value < best.value);
+        if lower
+            && self.fillings.0 < MOST_FILLINGS
+            && let Some(filling) = Filling::new(&shop.structure, &end.at, end.value)
+        {
+            self.fillings.0 += 1;
+            self.stage = Stage::Filling(Box::new(filling));
         }
-        Proposal::Moved { from, kind, step } => kind.apply(structure, from, *step, &mut rng),
+        if lower || self.best.is_none() {
+            self.best = Some(end);
+        }
     }
 }

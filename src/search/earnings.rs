@@ -1,0 +1,116 @@
+//! What members earn: shares of a budget by recent reward per evaluation, with a floor for each.
+//!
+//! Used twice: between heuristics, and inside a heuristic between its ways to propose. It is probability matching
+//! (Goldberg 1990; Thierens 2005): greedier rules starve members whose time comes late.
+
+/// The accounts of some members.
+#[derive(Clone, Debug)]
+pub struct Earnings {
+    accounts: Vec<Account>,
+    /// The smallest share of each member, relative to its share at the beginning.
+    floor: f64,
+    /// Evaluations after which what was earned counts half.
+    memory: f64,
+    /// Evaluations that each member is trusted with before its own rate outweighs the common one.
+    trust: f64,
+}
+
+#[derive(Clone, Copy, Debug)]
+struct Account {
+    beginning: f64,
+    reward: f64,
+    spent: f64,
+}
+
+impl Earnings {
+    /// Accounts of members with these shares at the beginning (scaled to sum 1). `floor` from 0 to 1 says how much of
+    /// that share is never taken away.
+    pub fn new(beginning: &[f64], floor: f64, memory: f64, trust: f64) -> Self {
+        let total: f64 = beginning.iter().sum();
+        let account = |&share: &f64| Account { beginning: share / total, reward: 0.0, spent: 0.0 };
+        Earnings { accounts: beginning.iter().map(account).collect(), floor, memory, trust }
+    }
+
+    /// A member spent evaluations, and earned a reward by them.
+    pub fn earn(&mut self, member: usize, evaluations: u64, reward: f64) {
+        let spent = evaluations as f64;
+        // Older earnings fade with every evaluation of anyone, so that rates of all members are of the same time.
+        let fade = self.memory / (self.memory + spent);
+        for account in &mut self.accounts {
+            account.reward *= fade;
+            account.spent *= fade;
+        }
+        self.accounts[member].reward += reward;
+        self.accounts[member].spent += spent;
+    }
+
+    /// Lengthens the memory as a hunt grows.
+    pub fn remember(&mut self, memory: f64) {
+        self.memory = self.memory.max(memory);
+    }
+
+    /// The shares now; they sum to 1.
+    pub fn shares(&self) -> Vec<f64> {
+        let (reward, spent) =
+            self.accounts.iter().fold((0.0, 0.0), |sum, account| (sum.0 + account.reward, sum.1 + account.spent));
+        let common = if spent > 0.0 { reward / spent } else { 0.0 };
+        let score = |account: &Account| {
+            let rate = (account.reward + common * self.trust) / (account.spent + self.trust);
+            account.beginning * rate
+        };
+        let total: f64 = self.accounts.iter().map(score).sum();
+        self.accounts
+            .iter()
+            .map(|account| {
+                let earned = if total > 0.0 { score(account) / total } else { account.beginning };
+                self.floor * account.beginning + (1.0 - self.floor) * earned
+            })
+            .collect()
+    }
+
+    /// The member at `draw` (from 0 to 1) of the shares laid end to end.
+    pub fn choose(&self, draw: f64) -> usize {
+        let mut left = draw;
+        let shares = self.shares();
+        for (member, share) in shares.iter().enumerate() {
+            if left < *share {
+                return member;
+            }
+            left -= share;
+        }
+        shares.iter().rposition(|&share| share > 0.0).unwrap_or(0)
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn who_earns_gets_more_and_nobody_starves() {
+        let mut earnings = Earnings::new(&[1.0, 1.0, 2.0], 0.2, 10_000.0, 500.0);
+        assert_eq!(earnings.shares(), [0.25, 0.25, 0.5]);
+        for _ in 0..200 {
+            earnings.earn(0, 100, 1.0);
+            earnings.earn(1, 100, 0.0);
+            earnings.earn(2, 100, 0.1);
+        }
+        let shares = earnings.shares();
+        assert!((shares.iter().sum::<f64>() - 1.0).abs() < 1e-12);
+        assert!(shares[0] > 0.6 && shares[1] >= 0.05 && shares[2] >= 0.1, "{shares:?}");
+        // A member that earned long ago is forgotten.
+        for _ in 0..2000 {
+            earnings.earn(0, 100, 0.0);
+            earnings.earn(1, 100, 1.0);
+            earnings.earn(2, 100, 0.0);
+        }
+        let shares = earnings.shares();
+        assert!(shares[1] > 0.7 && shares[0] >= 0.05, "{shares:?}");
+    }
+
+    #[test]
+    fn draws_follow_the_shares() {
+        let earnings = Earnings::new(&[0.5, 0.0, 0.5], 1.0, 1.0, 1.0);
+        assert_eq!([0.0, 0.49, 0.51, 0.999_999, 1.0].map(|draw| earnings.choose(draw)), [0, 0, 2, 2, 2]);
+    }
+}

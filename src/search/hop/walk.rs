@@ -1,0 +1,238 @@
+//! Walks: from one minimum to a lower one, at every scale, never uphill.
+//!
+//! Several steps are tried from the same place at once. Those that lead down by different ways are joined: their
+//! displacements are added up, which on landscapes whose unknowns act separately is worth as many steps one after the
+//! other. Which kind of step is tried follows what the kinds earned on this landscape.
+
+use std::collections::BTreeMap;
+use std::sync::Arc;
+
+use rand::{Rng, RngExt};
+use rand_chacha::ChaCha8Rng;
+
+use crate::search::earnings::Earnings;
+use crate::search::moves::{Move, general};
+use crate::search::proposer::{Arrival, Place, Scene};
+use crate::search::structure::Structure;
+use crate::search::task::Proposal;
+
+/// Starts of a round that share a walker.
+const STEPS_A_WALKER: u64 = 6;
+/// The most walkers.
+const MOST_WALKERS: u64 = 32;
+
+/// Kinds of step, each with its share at the beginning.
+const STEPS: [(Step, f64); 8] = [
+    (Step::Moved(Move::One), 0.15),
+    (Step::Moved(Move::Afresh), 0.15),
+    (Step::Moved(Move::Some), 0.1),
+    (Step::Moved(Move::All), 0.1),
+    (Step::Transplant, 0.2),
+    (Step::Difference, 0.1),
+    (Step::Repeat, 0.1),
+    (Step::Carry, 0.1),
+];
+
+#[derive(Clone, Copy, Debug, PartialEq)]
+enum Step {
+    /// A move from the place alone.
+    Moved(Move),
+    /// Some unknowns take their values from another minimum.
+    Transplant,
+    /// The difference of two other minima is added.
+    Difference,
+    /// The last displacement that led down is made again.
+    Repeat,
+    /// The last displacement of one unknown that led down is made in another unknown: wells of one family are often
+    /// equally far apart.
+    Carry,
+}
+
+/// All walks.
+#[derive(Clone, Debug)]
+pub struct Walks {
+    walkers: Vec<Walker>,
+    flights: BTreeMap<u64, Flight>,
+    next_mark: u64,
+    steps: Earnings,
+    patience: u32,
+}
+
+#[derive(Clone, Debug, Default)]
+struct Walker {
+    place: Option<Place>,
+    /// Counts its new beginnings: what was proposed before one says nothing after it.
+    life: u32,
+    idle: u32,
+    /// Displacements that led down from places that it has left meanwhile.
+    gains: Vec<Vec<f64>>,
+    last_gain: Option<Vec<f64>>,
+}
+
+#[derive(Clone, Debug)]
+struct Flight {
+    walker: usize,
+    life: u32,
+    base: Option<Place>,
+    /// The kind of step; `None` for a joined one, or a beginning.
+    step: Option<usize>,
+}
+
+impl Walks {
+    /// No walk has begun.
+    pub fn new(structure: &Structure) -> Self {
+        let n = structure.n_unknowns();
+        // Too few evaluations to learn from would make the choice a lottery: each kind is trusted for some descents.
+        let steps = Earnings::new(&STEPS.map(|step| step.1), 0.35, 20_000.0, 400.0);
+        Walks {
+            walkers: Vec::new(),
+            flights: BTreeMap::new(),
+            next_mark: 0,
+            steps,
+            patience: (100 + 20 * n as u32).min(1000),
+        }
+    }
+
+    /// The next step of a round.
+    pub fn propose(&mut self, scene: &Scene<'_>, turn: u64, rng: &mut ChaCha8Rng) -> (Proposal, u64) {
+        let number = (turn / STEPS_A_WALKER % MOST_WALKERS) as usize;
+        if self.walkers.len() <= number {
+            self.walkers.resize_with(number + 1, Walker::default);
+        }
+        let walker = &mut self.walkers[number];
+        let structure = scene.structure;
+        let base = walker.place.clone();
+        let (proposal, step) = match &base {
+            None => (Proposal::Uniform, None),
+            Some(place) if !walker.gains.is_empty() => {
+                (point(structure, join(structure, &place.at, &std::mem::take(&mut walker.gains))), None)
+            }
+            Some(place) => {
+                let kind = self.steps.choose(rng.random::<f64>());
+                (point(structure, make_step(STEPS[kind].0, scene, walker, place, rng)), Some(kind))
+            }
+        };
+        let mark = self.next_mark;
+        self.next_mark += 1;
+        self.flights.insert(mark, Flight { walker: number, life: walker.life, base, step });
+        (proposal, mark)
+    }
+
+    /// The result of a step.
+    pub fn arrive(&mut self, scene: &Scene<'_>, arrival: Arrival) {
+        let Some(flight) = self.flights.remove(&arrival.mark) else { return };
+        let walker = &mut self.walkers[flight.walker];
+        let improved = match (&arrival.place, &flight.base) {
+            (Some(place), Some(base)) => place.entry != base.entry && base.is_above(place.value),
+            _ => false,
+        };
+        if let Some(step) = flight.step {
+            self.steps.earn(step, arrival.evaluations, f64::from(u8::from(improved)));
+        }
+        if flight.life != walker.life {
+            return;
+        }
+        let Some(place) = arrival.place else {
+            walker.grow_idle(self.patience);
+            return;
+        };
+        let Some(current) = walker.place.clone() else {
+            walker.place = Some(place);
+            return;
+        };
+        let shift = |to: &Place, from: &Place| -> Vec<f64> {
+            (0..to.at.len()).map(|slot| scene.structure.difference(slot, to.at[slot], from.at[slot])).collect()
+        };
+        if place.entry != current.entry && current.is_above(place.value) {
+            if let Some(base) = flight.base {
+                walker.last_gain = Some(shift(&place, &base));
+                if base.entry != current.entry {
+                    walker.gains.push(shift(&current, &base));
+                }
+            }
+            walker.place = Some(place);
+            walker.idle = 0;
+        } else if improved && let Some(base) = flight.base {
+            // Lower than where it began, but not than where the walker is by now.
+            if base.entry != current.entry && place.entry != current.entry {
+                walker.gains.push(shift(&place, &base));
+            }
+            walker.grow_idle(self.patience);
+        } else {
+            walker.grow_idle(self.patience);
+        }
+    }
+}
+
+impl Walker {
+    fn grow_idle(&mut self, patience: u32) {
+        self.idle += 1;
+        if self.idle > patience {
+            *self = Walker { life: self.life + 1, ..Walker::default() };
+        }
+    }
+}
+
+fn point(structure: &Structure, mut at: Vec<f64>) -> Proposal {
+    structure.bring_inside(&mut at);
+    Proposal::Point(Arc::from(at))
+}
+
+/// The place displaced by all gains. Where several move one unknown, the largest displacement counts: two ways to the
+/// same improvement are not made twice.
+fn join(structure: &Structure, at: &[f64], gains: &[Vec<f64>]) -> Vec<f64> {
+    let mut joined = at.to_vec();
+    for (slot, x) in joined.iter_mut().enumerate() {
+        let largest = gains.iter().map(|gain| gain[slot]).fold(0.0, |most: f64, shift| {
+            if shift.abs() > most.abs() { shift } else { most }
+        });
+        if largest.abs() > 1e-6 * structure.scale[slot] {
+            *x += largest;
+        }
+    }
+    joined
+}
+
+fn make_step(step: Step, scene: &Scene<'_>, walker: &Walker, place: &Place, rng: &mut ChaCha8Rng) -> Vec<f64> {
+    let structure = scene.structure;
+    let mut at = place.at.to_vec();
+    let other = |rng: &mut ChaCha8Rng| {
+        let chosen = (!scene.met.is_empty()).then(|| scene.met[rng.random_range(0..scene.met.len())])?;
+        scene.ledger.point(chosen)
+    };
+    match step {
+        Step::Moved(kind) => return kind.apply(structure, &at, 0.1, rng),
+        Step::Transplant => {
+            if let Some(other) = other(rng) {
+                general::transplant(&mut at, &other, rng);
+            }
+        }
+        Step::Difference => {
+            if let (Some(first), Some(second)) = (other(rng), other(rng)) {
+                general::difference(&mut at, &first, &second, rng);
+            }
+        }
+        Step::Repeat => match &walker.last_gain {
+            Some(gain) => at.iter_mut().zip(gain).for_each(|(x, shift)| *x += shift),
+            None => general::some(structure, &mut at, rng),
+        },
+        Step::Carry => match &walker.last_gain {
+            Some(gain) => carry(structure, &mut at, gain, rng),
+            None => general::one(structure, &mut at, rng),
+        },
+    }
+    if at[..] == place.at[..] {
+        // Nothing to take over: any step is better than none.
+        general::one(structure, &mut at, rng);
+    }
+    at
+}
+
+/// The largest displacement of one unknown, made in another, either way.
+fn carry(structure: &Structure, at: &mut [f64], gain: &[f64], rng: &mut impl Rng) {
+    let relative = |slot: usize| gain[slot] / structure.scale[slot];
+    let largest = (0..gain.len()).fold(0, |best, slot| if relative(slot).abs() > relative(best).abs() { slot } else { best });
+    let slot = rng.random_range(0..at.len());
+    let sign = if rng.random::<bool>() { 1.0 } else { -1.0 };
+    at[slot] += sign * relative(largest) * structure.scale[slot];
+}

@@ -1,0 +1,124 @@
+//! The portfolio: which heuristic proposes next, and what each has earned.
+//!
+//! Shares of a mix move by recent earnings: a lower value counts most, new minima by how near they are to the lowest. The
+//! survey stands outside: its share is fixed, and so are the shares of a mix that the user gave with numbers.
+
+use rand::RngExt;
+use rand_chacha::ChaCha8Rng;
+
+use super::anneal::Anneal;
+use super::earnings::Earnings;
+use super::evolve::Evolve;
+use super::hop::Hop;
+use super::multistart::Multistart;
+use super::proposer::{Arrival, Proposer, Scene};
+use super::schedule::Schedule;
+use super::settings::{Heuristic, Mix};
+use super::structure::Structure;
+use super::task::{Proposal, Work};
+
+/// How much of its share at the beginning a heuristic keeps whatever it earns.
+const FLOOR: f64 = 0.3;
+/// Evaluations after which earnings count half: at least so many, and this part of all so far.
+const MEMORY: (f64, f64) = (30_000.0, 0.2);
+/// Evaluations that each is trusted with at first.
+const TRUST: f64 = 5_000.0;
+
+/// The heuristics of a hunt with their accounts.
+pub struct Portfolio {
+    mix: Mix,
+    survey: f64,
+    schedule: Schedule,
+    earnings: Earnings,
+    members: Vec<Box<dyn Proposer>>,
+    /// Fillings of empty places tried and those that moved a point, of late.
+    fillings: (f64, f64),
+}
+
+impl Portfolio {
+    /// A portfolio in which nothing was proposed.
+    pub fn new(mix: &Mix, survey: f64, structure: &Structure) -> Self {
+        let beginning: Vec<f64> = mix.members().iter().map(|member| member.1).collect();
+        let member = |&(heuristic, _): &(Heuristic, f64)| -> Box<dyn Proposer> {
+            match heuristic {
+                Heuristic::Anneal => Box::new(Anneal::new(structure)),
+                Heuristic::Evolve => Box::new(Evolve::new(structure)),
+                Heuristic::Hop => Box::new(Hop::new(structure)),
+                Heuristic::Given | Heuristic::Survey | Heuristic::Multistart => Box::new(Multistart::default()),
+            }
+        };
+        Portfolio {
+            mix: mix.clone(),
+            survey,
+            schedule: Schedule::new(mix, survey),
+            earnings: Earnings::new(&beginning, FLOOR, MEMORY.0, TRUST),
+            members: mix.members().iter().map(member).collect(),
+            fillings: (0.0, 0.0),
+        }
+    }
+
+    /// Fixes the shares of the next round by the earnings so far.
+    pub fn begin_round(&mut self) {
+        if self.mix.is_fixed() {
+            return;
+        }
+        let spent: u64 = self.schedule.spent().iter().sum();
+        self.earnings.remember(MEMORY.1 * spent as f64);
+        self.schedule.set_shares(&self.mix, self.survey, &self.earnings.shares());
+    }
+
+    /// The next task. `turns` counts the tasks of the round by heuristic.
+    pub fn propose(&mut self, scene: &Scene<'_>, turns: &mut [u64; Heuristic::ALL.len()], rng: &mut ChaCha8Rng) -> Work {
+        let heuristic = self.schedule.next();
+        self.schedule.begin(heuristic);
+        let Some(member) = self.member(heuristic) else {
+            return Work::Descend { heuristic, proposal: Proposal::Uniform, mark: 0, fill: false };
+        };
+        let turn = turns[heuristic.number()];
+        turns[heuristic.number()] += 1;
+        let proposed = self.members[member].propose(scene, turn, rng);
+        // A filling that never moves a point is a waste; now and then it is tried all the same.
+        let (tried, moved) = self.fillings;
+        let chance = ((moved + 1.0) / (tried + 1.0) * 10.0).clamp(0.1, 1.0);
+        let fill = proposed.fill && rng.random::<f64>() < chance;
+        Work::Descend { heuristic, proposal: proposed.proposal, mark: proposed.mark, fill }
+    }
+
+    /// Books a task of points that the user gave.
+    pub fn begin_given(&mut self) {
+        self.schedule.begin(Heuristic::Given);
+    }
+
+    /// What became of a task.
+    pub fn arrive(&mut self, heuristic: Heuristic, scene: &Scene<'_>, arrival: Arrival, rng: &mut ChaCha8Rng) {
+        self.schedule.end(heuristic, arrival.evaluations);
+        let Some(member) = self.member(heuristic) else { return };
+        self.earnings.earn(member, arrival.evaluations, arrival.worth);
+        self.members[member].arrive(scene, arrival, rng);
+    }
+
+    /// Counts fillings.
+    pub fn count_fillings(&mut self, (tried, moved): (u32, u32)) {
+        let fade = 0.998_f64;
+        self.fillings =
+            (fade * self.fillings.0 + f64::from(tried), fade * self.fillings.1 + f64::from(moved));
+    }
+
+    /// The account of evaluations by heuristic.
+    pub fn schedule(&self) -> &Schedule {
+        &self.schedule
+    }
+
+    /// The ways inside heuristics with their shares.
+    pub fn ways(&self) -> Vec<(Heuristic, &'static str, f64)> {
+        let named = |(member, (heuristic, _)): (&Box<dyn Proposer>, &(Heuristic, f64))| {
+            let heuristic = *heuristic;
+            member.ways().into_iter().map(move |(name, share)| (heuristic, name, share)).collect::<Vec<_>>()
+        };
+        self.members.iter().zip(self.mix.members()).flat_map(named).collect()
+    }
+
+    fn member(&self, heuristic: Heuristic) -> Option<usize> {
+        self.mix.members().iter().position(|member| member.0 == heuristic)
+    }
+}
