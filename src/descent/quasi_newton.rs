@@ -24,6 +24,9 @@ const FIRST: f64 = 0.01;
 const ENOUGH: f64 = 1e-4;
 /// Values that differ by less than this, relative to the larger, differ by rounding.
 const ROUNDING: f64 = 1e-13;
+/// How many times the promised decrease an outlook allows for, and the evaluations before which it allows anything.
+const OUTLOOK: f64 = 8.0;
+const OUTLOOK_FROM: u64 = 4;
 /// Trials along one direction before it is given up.
 const MOST_TRIALS: u32 = 24;
 
@@ -162,6 +165,15 @@ impl Descent {
     /// Evaluations so far.
     pub fn evaluations(&self) -> u64 {
         self.evaluations
+    }
+
+    /// The value that it may still reach, generously: where it stands, less several times what the curvature met so far
+    /// promises. Minus infinity while little is known.
+    pub fn outlook(&self) -> f64 {
+        if !self.started || self.steepest || self.evaluations < OUTLOOK_FROM {
+            return f64::NEG_INFINITY;
+        }
+        self.value - OUTLOOK * self.slope.abs()
     }
 
     /// The end; of one that has not ended, as if its evaluations were spent.

@@ -230,8 +230,11 @@ impl Proposer for Evolve {
             scene.structure.bring_inside(&mut at);
             Proposal::Point(at.into())
         };
+        // A child above the worst member of a full population has no place.
+        let full = self.population.len() >= self.capacity;
+        let ceiling = self.population.last().filter(|_| full).map_or(f64::INFINITY, |worst| worst.place.value);
         self.flights.insert(mark, flight);
-        Proposed { proposal, mark, fill: cloud }
+        Proposed { proposal, mark, fill: cloud, ceiling }
     }
 
     fn arrive(&mut self, scene: &Scene<'_>, arrival: Arrival, _rng: &mut ChaCha8Rng) {

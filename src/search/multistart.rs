@@ -17,7 +17,7 @@ impl Proposer for Multistart {
         let number = self.drawn;
         // Those between are independent of each other.
         let proposal = if number.is_multiple_of(2) { Proposal::Spread(number / 2) } else { Proposal::Uniform };
-        Proposed { proposal, mark: 0, fill: false }
+        Proposed { proposal, mark: 0, fill: false, ceiling: f64::INFINITY }
     }
 
     fn arrive(&mut self, _scene: &Scene<'_>, _arrival: Arrival, _rng: &mut ChaCha8Rng) {}

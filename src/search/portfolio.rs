@@ -72,7 +72,7 @@ impl Portfolio {
         let heuristic = self.schedule.next();
         self.schedule.begin(heuristic);
         let Some(member) = self.member(heuristic) else {
-            return Work::Descend { heuristic, proposal: Proposal::Uniform, mark: 0, fill: false };
+            return Work::Descend { heuristic, proposal: Proposal::Uniform, mark: 0, fill: false, ceiling: f64::INFINITY };
         };
         let turn = turns[heuristic.number()];
         turns[heuristic.number()] += 1;
@@ -81,7 +81,7 @@ impl Portfolio {
         let (tried, moved) = self.fillings;
         let chance = ((moved + 1.0) / (tried + 1.0) * 10.0).clamp(0.1, 1.0);
         let fill = proposed.fill && rng.random::<f64>() < chance;
-        Work::Descend { heuristic, proposal: proposed.proposal, mark: proposed.mark, fill }
+        Work::Descend { heuristic, proposal: proposed.proposal, mark: proposed.mark, fill, ceiling: proposed.ceiling }
     }
 
     /// Books a task of points that the user gave.

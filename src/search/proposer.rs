@@ -55,6 +55,8 @@ pub struct Proposed {
     pub mark: u64,
     /// Whether empty places of a cloud are to be filled after the descent.
     pub fill: bool,
+    /// Ends above this value are of no use to the heuristic: the descent may be abandoned.
+    pub ceiling: f64,
 }
 
 /// The end of a proposed descent.

@@ -234,7 +234,7 @@ impl Hunt {
             let point = Proposal::Point(self.settings.given[self.given_drawn].clone().into());
             self.given_drawn += 1;
             self.portfolio.begin_given();
-            work.push(Work::Descend { heuristic: Heuristic::Given, proposal: point, mark: 0, fill: false });
+            work.push(Work::Descend { heuristic: Heuristic::Given, proposal: point, mark: 0, fill: false, ceiling: f64::INFINITY });
         }
     }
 

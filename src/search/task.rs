@@ -31,6 +31,8 @@ pub enum Work {
         mark: u64,
         /// Whether empty places of a cloud are to be filled after the descent.
         fill: bool,
+        /// The descent is abandoned once no value below this is in sight.
+        ceiling: f64,
     },
     /// Polish a converged point and test its stiffness.
     Confirm {
@@ -145,4 +147,6 @@ pub enum Lost {
     OutOfBudget,
     /// No step went down, though the gradient had not vanished.
     Stalled,
+    /// No value was in sight that its heuristic could use.
+    Abandoned,
 }

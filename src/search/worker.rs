@@ -78,6 +78,8 @@ struct Job {
     stage: Stage,
     /// Fillings tried, and those that moved a point.
     fillings: (u32, u32),
+    /// Nothing below the ceiling is in sight.
+    abandoned: bool,
     /// The lower end of the descents so far, where a filling led to another.
     best: Option<End>,
     /// The confirmation under way; `None` while the descent is.
@@ -160,6 +162,7 @@ impl<'a> Worker<'a> {
             saddles: 0,
             stage,
             fillings: (0, 0),
+            abandoned: false,
             best: None,
             confirmation,
         });
@@ -230,6 +233,8 @@ impl<'a> Worker<'a> {
                 None => {
                     if bench.descent.tell(value, &self.gradient) == Progress::Ended {
                         job.descent_ended(&mut bench.descent, shop);
+                    } else if let Work::Descend { ceiling, .. } = job.task.work {
+                        job.abandoned = bench.descent.outlook() > ceiling;
                     }
                 }
             }
@@ -243,16 +248,19 @@ impl<'a> Worker<'a> {
         let job = bench.job.as_mut()?;
         let finding = match (&job.task.work, &job.confirmation) {
             (Work::Descend { heuristic, mark, .. }, _) => {
-                if !matches!(job.stage, Stage::None) || !bench.descent.has_ended() {
+                let (heuristic, mark) = (*heuristic, *mark);
+                if !matches!(job.stage, Stage::None) || !(job.abandoned || bench.descent.has_ended()) {
                     return None;
                 }
-                let (heuristic, mark) = (*heuristic, *mark);
                 let end = job.best.take().unwrap_or_else(|| bench.descent.end());
                 let met = |kinked| {
                     let candidate = Candidate::new(&shop.identity, end.value, end.at.clone().into(), kinked);
                     Finding::Met { heuristic, mark, candidate }
                 };
                 match end.kind {
+                    EndKind::OutOfBudget if job.abandoned => {
+                        Finding::Lost { heuristic, mark, reason: Lost::Abandoned }
+                    }
                     EndKind::Converged => met(false),
                     EndKind::Stalled if shop.kinked => met(true),
                     EndKind::Stalled => Finding::Lost { heuristic, mark, reason: Lost::Stalled },

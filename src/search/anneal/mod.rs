@@ -44,7 +44,7 @@ impl Proposer for Anneal {
         } else {
             None
         };
-        Proposed { proposal: Proposal::Annealed { from, evaluations }, mark: 0, fill: false }
+        Proposed { proposal: Proposal::Annealed { from, evaluations }, mark: 0, fill: false, ceiling: f64::INFINITY }
     }
 
     fn arrive(&mut self, _scene: &Scene<'_>, _arrival: Arrival, _rng: &mut ChaCha8Rng) {}

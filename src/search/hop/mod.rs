@@ -64,19 +64,19 @@ impl Proposer for Hop {
         let way = self.ways.choose(rng.random::<f64>());
         let own_turn = self.turns.1[way];
         self.turns.1[way] += 1;
-        let cloud = !scene.structure.clouds.is_empty();
-        let (proposal, mark) = match way {
+        let free = |proposal, fill| Proposed { proposal, mark: 0, fill, ceiling: f64::INFINITY };
+        let proposed = match way {
             0 => self.walks.propose(scene, own_turn, rng),
             1 => self.tempered.propose(scene, own_turn, rng),
-            2 => (self.departures.propose(scene, rng), 0),
+            2 => free(self.departures.propose(scene, rng), false),
             _ => {
                 let n_models = scene.ledger.len().min(MODELS);
                 let chosen = rng.random_range(0..n_models.max(1));
                 let model = scene.ledger.entries().nth(chosen).and_then(|entry| scene.ledger.point(entry.id()));
-                (Proposal::Symmetric { model }, 0)
+                free(Proposal::Symmetric { model }, true)
             }
         };
-        Proposed { proposal, mark: mark * WAYS + way as u64, fill: cloud && way != 2 }
+        Proposed { mark: proposed.mark * WAYS + way as u64, ..proposed }
     }
 
     fn arrive(&mut self, scene: &Scene<'_>, arrival: Arrival, rng: &mut ChaCha8Rng) {

@@ -14,7 +14,7 @@ use rand_chacha::ChaCha8Rng;
 use crate::ledger::EntryId;
 use crate::numbers::functions;
 use crate::search::moves::Move;
-use crate::search::proposer::{Arrival, Place, Scene};
+use crate::search::proposer::{Arrival, Place, Proposed, Scene};
 use crate::search::structure::Structure;
 use crate::search::task::Proposal;
 
@@ -87,7 +87,7 @@ impl Tempered {
 
     /// The next step of a round, and the mark that comes back with its result. Even and odd rounds have chains of their
     /// own, since a round does not see the one before it.
-    pub fn propose(&mut self, scene: &Scene<'_>, turn: u64, rng: &mut ChaCha8Rng) -> (Proposal, u64) {
+    pub fn propose(&mut self, scene: &Scene<'_>, turn: u64, rng: &mut ChaCha8Rng) -> Proposed {
         let number = (2 * turn + scene.round % 2) as usize;
         while self.chains.len() <= number {
             // Even and odd chains run through the temperatures alike.
@@ -110,7 +110,13 @@ impl Tempered {
             }
         };
         chain.last_move = chain.place.as_ref().map(|_| kind);
-        (proposal, number as u64)
+        // What would be accepted once in a thousand times is of no use; a jump takes anything.
+        let rise = 7.0 * chain.temperature * self.usual_difference.unwrap_or(f64::INFINITY);
+        let ceiling = match &chain.place {
+            Some(place) if chain.jumps == 0 => place.value + rise,
+            _ => f64::INFINITY,
+        };
+        Proposed { proposal, mark: number as u64, fill: !scene.structure.clouds.is_empty(), ceiling }
     }
 
     /// The result of a chain's step.

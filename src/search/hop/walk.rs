@@ -12,7 +12,7 @@ use rand_chacha::ChaCha8Rng;
 
 use crate::search::earnings::Earnings;
 use crate::search::moves::{Move, general};
-use crate::search::proposer::{Arrival, Place, Scene};
+use crate::search::proposer::{Arrival, Place, Proposed, Scene};
 use crate::search::structure::Structure;
 use crate::search::task::Proposal;
 
@@ -22,8 +22,9 @@ const STEPS_A_WALKER: u64 = 6;
 const MOST_WALKERS: u64 = 32;
 
 /// Kinds of step, each with its share at the beginning.
-const STEPS: [(Step, f64); 8] = [
-    (Step::Moved(Move::One), 0.15),
+const STEPS: [(Step, f64); 9] = [
+    (Step::Moved(Move::One), 0.1),
+    (Step::Moved(Move::Pair), 0.05),
     (Step::Moved(Move::Afresh), 0.15),
     (Step::Moved(Move::Some), 0.1),
     (Step::Moved(Move::All), 0.1),
@@ -94,7 +95,7 @@ impl Walks {
     }
 
     /// The next step of a round.
-    pub fn propose(&mut self, scene: &Scene<'_>, turn: u64, rng: &mut ChaCha8Rng) -> (Proposal, u64) {
+    pub fn propose(&mut self, scene: &Scene<'_>, turn: u64, rng: &mut ChaCha8Rng) -> Proposed {
         let number = (turn / STEPS_A_WALKER % MOST_WALKERS) as usize;
         if self.walkers.len() <= number {
             self.walkers.resize_with(number + 1, Walker::default);
@@ -114,8 +115,10 @@ impl Walks {
         };
         let mark = self.next_mark;
         self.next_mark += 1;
+        // Only what lies below the place is of use.
+        let ceiling = base.as_ref().map_or(f64::INFINITY, |base| base.value);
         self.flights.insert(mark, Flight { walker: number, life: walker.life, base, step });
-        (proposal, mark)
+        Proposed { proposal, mark, fill: false, ceiling }
     }
 
     /// The result of a step.

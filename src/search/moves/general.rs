@@ -29,6 +29,21 @@ pub fn one(structure: &Structure, at: &mut [f64], rng: &mut impl Rng) {
     at[slot] += step * structure.scale[slot] * (2.0 * rng.random::<f64>() - 1.0);
 }
 
+/// Two unknowns, half the time neighbours, move by opposite amounts in their scales, at a scale drawn anew: sums stay, which
+/// is the direction of the rest of a chain, or the total of a mixture.
+pub fn pair(structure: &Structure, at: &mut [f64], rng: &mut impl Rng) {
+    let n = at.len();
+    if n < 2 {
+        return one(structure, at, rng);
+    }
+    let shift = drawn_step(rng) * (2.0 * rng.random::<f64>() - 1.0);
+    let first = rng.random_range(0..n);
+    let apart = if rng.random::<bool>() { 1 } else { rng.random_range(1..n) };
+    let second = (first + apart) % n;
+    at[first] += shift * structure.scale[first];
+    at[second] -= shift * structure.scale[second];
+}
+
 /// One unknown is drawn afresh from the start region.
 pub fn afresh(structure: &Structure, at: &mut [f64], rng: &mut impl Rng) {
     let slot = rng.random_range(0..at.len());

@@ -26,6 +26,8 @@ pub enum Move {
     Shake,
     /// One unknown, at a scale drawn anew.
     One,
+    /// Two unknowns by opposite amounts, at a scale drawn anew.
+    Pair,
     /// One unknown, drawn afresh.
     Afresh,
     /// Some unknowns, at a scale drawn anew.
@@ -47,7 +49,8 @@ impl Move {
         match (structure.clouds.is_empty(), with_kinds) {
             (true, _) => vec![
                 (Move::Shake, 0.25),
-                (Move::One, 0.25),
+                (Move::One, 0.2),
+                (Move::Pair, 0.05),
                 (Move::Afresh, 0.05),
                 (Move::Some, 0.2),
                 (Move::All, 0.2),
@@ -81,6 +84,7 @@ impl Move {
         match self {
             Move::Shake => general::shake(structure, &mut at, step, rng),
             Move::One => general::one(structure, &mut at, rng),
+            Move::Pair => general::pair(structure, &mut at, rng),
             Move::Afresh => general::afresh(structure, &mut at, rng),
             Move::Some => general::some(structure, &mut at, rng),
             Move::All => general::all(structure, &mut at, rng),
