@@ -25,10 +25,10 @@ struct Account {
 impl Earnings {
     /// Accounts of members with these shares at the beginning (scaled to sum 1). `floor` from 0 to 1 says how much of
     /// that share is never taken away.
-    pub fn new(beginning: &[f64], floor: f64, memory: f64, trust: f64) -> Self {
+    pub fn new(beginning: &[f64], floor: f64) -> Self {
         let total: f64 = beginning.iter().sum();
         let account = |&share: &f64| Account { beginning: share / total, reward: 0.0, spent: 0.0 };
-        Earnings { accounts: beginning.iter().map(account).collect(), floor, memory, trust }
+        Earnings { accounts: beginning.iter().map(account).collect(), floor, memory: 30_000.0, trust: 5_000.0 }
     }
 
     /// A member spent evaluations, and earned a reward by them.
@@ -44,9 +44,9 @@ impl Earnings {
         self.accounts[member].spent += spent;
     }
 
-    /// Lengthens the memory as a hunt grows.
-    pub fn remember(&mut self, memory: f64) {
-        self.memory = self.memory.max(memory);
+    /// Sets the memory and the trust, in evaluations, for the time to come.
+    pub fn remember(&mut self, memory: f64, trust: f64) {
+        (self.memory, self.trust) = (memory.max(1.0), trust.max(1.0));
     }
 
     /// The shares now; they sum to 1.
@@ -88,7 +88,8 @@ mod tests {
 
     #[test]
     fn who_earns_gets_more_and_nobody_starves() {
-        let mut earnings = Earnings::new(&[1.0, 1.0, 2.0], 0.2, 10_000.0, 500.0);
+        let mut earnings = Earnings::new(&[1.0, 1.0, 2.0], 0.2);
+        earnings.remember(10_000.0, 500.0);
         assert_eq!(earnings.shares(), [0.25, 0.25, 0.5]);
         for _ in 0..200 {
             earnings.earn(0, 100, 1.0);
@@ -110,7 +111,7 @@ mod tests {
 
     #[test]
     fn draws_follow_the_shares() {
-        let earnings = Earnings::new(&[0.5, 0.0, 0.5], 1.0, 1.0, 1.0);
+        let earnings = Earnings::new(&[0.5, 0.0, 0.5], 1.0);
         assert_eq!([0.0, 0.49, 0.51, 0.999_999, 1.0].map(|draw| earnings.choose(draw)), [0, 0, 2, 2, 2]);
     }
 }

@@ -19,10 +19,10 @@ use super::task::{Proposal, Work};
 
 /// How much of its share at the beginning a heuristic keeps whatever it earns.
 const FLOOR: f64 = 0.3;
-/// Evaluations after which earnings count half: at least so many, and this part of all so far.
-const MEMORY: (f64, f64) = (30_000.0, 0.2);
-/// Evaluations that each is trusted with at first.
-const TRUST: f64 = 5_000.0;
+/// Descents after which earnings count half: at least so many, and this part of all evaluations so far.
+const MEMORY: (f64, f64) = (400.0, 0.2);
+/// Descents that each is trusted with at first.
+const TRUST: f64 = 40.0;
 
 /// The heuristics of a hunt with their accounts.
 pub struct Portfolio {
@@ -47,11 +47,13 @@ impl Portfolio {
                 Heuristic::Given | Heuristic::Survey | Heuristic::Multistart => Box::new(Multistart::default()),
             }
         };
+        let mut schedule = Schedule::new(mix, survey);
+        schedule.expect(Heuristic::Anneal, Anneal::expected_cost(structure));
         Portfolio {
             mix: mix.clone(),
             survey,
-            schedule: Schedule::new(mix, survey),
-            earnings: Earnings::new(&beginning, FLOOR, MEMORY.0, TRUST),
+            schedule,
+            earnings: Earnings::new(&beginning, FLOOR),
             members: mix.members().iter().map(member).collect(),
             fillings: (0.0, 0.0),
         }
@@ -59,11 +61,15 @@ impl Portfolio {
 
     /// Fixes the shares of the next round by the earnings so far.
     pub fn begin_round(&mut self) {
+        let spent: u64 = self.schedule.spent().iter().sum();
+        let descents: u64 = self.schedule.descents().iter().sum();
+        let cost = spent as f64 / descents.max(1) as f64;
+        let memory = (MEMORY.0 * cost).max(MEMORY.1 * spent as f64);
+        self.earnings.remember(memory, TRUST * cost);
+        self.members.iter_mut().for_each(|member| member.begin_round(memory, cost));
         if self.mix.is_fixed() {
             return;
         }
-        let spent: u64 = self.schedule.spent().iter().sum();
-        self.earnings.remember(MEMORY.1 * spent as f64);
         self.schedule.set_shares(&self.mix, self.survey, &self.earnings.shares());
     }
 

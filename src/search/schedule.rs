@@ -18,6 +18,7 @@ pub struct Schedule {
     pending: [u64; COUNT],
     /// Evaluations that the tasks under way were booked with, and how many tasks those are.
     booked: [f64; COUNT],
+    expected: [Option<f64>; COUNT],
 }
 
 impl Schedule {
@@ -31,6 +32,7 @@ impl Schedule {
             descents: [0; COUNT],
             pending: [0; COUNT],
             booked: zeros,
+            expected: [None; COUNT],
         };
         let shares: Vec<f64> = mix.members().iter().map(|member| member.1).collect();
         schedule.set_shares(mix, survey, &shares);
@@ -50,18 +52,24 @@ impl Schedule {
         self.share
     }
 
-    /// The heuristic to which most is due, counting what is under way; ties go to the first.
+    /// The heuristic whose next task would be paid for by its share soonest, counting what is under way (weighted fair
+    /// queueing, Demers, Keshav and Shenker 1989); ties go to the first. Hence a costly task of a heuristic with a small
+    /// share waits until the hunt has grown to it.
     pub fn next(&self) -> Heuristic {
-        let mut best = (f64::NEG_INFINITY, Heuristic::Survey);
+        let mut best = (f64::INFINITY, Heuristic::Survey);
         for heuristic in Heuristic::ALL.into_iter().filter(|heuristic| self.share[heuristic.number()] > 0.0) {
-            // What the next task would make due is added, so that a share is aimed at rather than passed each time.
             let number = heuristic.number();
-            let due = self.due[number] + self.share[number] * self.usual_cost(heuristic);
-            if due > best.0 {
-                best = (due, heuristic);
+            let wait = (self.usual_cost(heuristic) - self.due[number]) / self.share[number];
+            if wait < best.0 {
+                best = (wait, heuristic);
             }
         }
         best.1
+    }
+
+    /// What a task of the heuristic will cost, while none has ended.
+    pub fn expect(&mut self, heuristic: Heuristic, evaluations: f64) {
+        self.expected[heuristic.number()] = Some(evaluations);
     }
 
     /// A task of the heuristic is under way.
@@ -107,6 +115,7 @@ impl Schedule {
         let mean = |spent: u64, descents: u64| spent as f64 / descents as f64;
         let number = heuristic.number();
         match (self.descents[number], self.descents.iter().sum::<u64>()) {
+            (0, _) if self.expected[number].is_some() => self.expected[number].unwrap_or(0.0),
             (0, 0) => 100.0,
             (0, all) => mean(self.spent.iter().sum(), all),
             (own, _) => mean(self.spent[number], own),

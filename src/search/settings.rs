@@ -146,10 +146,10 @@ impl Default for Mix {
     /// All four, mostly `hop` at the beginning; then what they earn decides.
     fn default() -> Self {
         let members = vec![
-            (Heuristic::Multistart, 0.08),
+            (Heuristic::Multistart, 0.06),
             (Heuristic::Anneal, 0.04),
-            (Heuristic::Evolve, 0.2),
-            (Heuristic::Hop, 0.68),
+            (Heuristic::Evolve, 0.15),
+            (Heuristic::Hop, 0.75),
         ];
         Mix { members, fixed: false }
     }

@@ -28,6 +28,11 @@ pub struct Anneal {
 }
 
 impl Anneal {
+    /// Evaluations of a first chain with its descent, roughly.
+    pub fn expected_cost(structure: &Structure) -> f64 {
+        1.2 * Anneal::new(structure).unit as f64
+    }
+
     /// No chain has started.
     pub fn new(structure: &Structure) -> Self {
         Anneal { drawn: 0, unit: 200 + 30 * structure.n_unknowns() as u64 }

@@ -25,10 +25,12 @@ use walk::Walks;
 const NAMES: [&str; WAYS as usize] = ["walk", "tempered", "departure", "symmetric"];
 const WAYS: u64 = 4;
 /// Their shares at the beginning, without and with clouds.
-const GENERAL: [f64; WAYS as usize] = [0.7, 0.2, 0.1, 0.0];
+const GENERAL: [f64; WAYS as usize] = [0.8, 0.12, 0.08, 0.0];
 const CLOUD: [f64; WAYS as usize] = [0.0, 0.35, 0.15, 0.5];
 /// How much of the share at the beginning a way keeps whatever it earns.
 const FLOOR: f64 = 0.4;
+/// Descents that each way is trusted with at first.
+const TRUST: f64 = 30.0;
 /// How many of the lowest minima are models for the size of symmetric starts.
 const MODELS: usize = 8;
 
@@ -47,7 +49,7 @@ impl Hop {
     pub fn new(structure: &Structure) -> Self {
         let shares = if structure.clouds.is_empty() { GENERAL } else { CLOUD };
         Hop {
-            ways: Earnings::new(&shares, FLOOR, 50_000.0, 3_000.0),
+            ways: Earnings::new(&shares, FLOOR),
             walks: Walks::new(structure),
             tempered: Tempered::new(structure),
             departures: Departures::new(structure),
@@ -88,6 +90,11 @@ impl Proposer for Hop {
             1 => self.tempered.arrive(arrival, rng),
             _ => {}
         }
+    }
+
+    fn begin_round(&mut self, memory: f64, cost: f64) {
+        self.ways.remember(memory, TRUST * cost);
+        self.walks.begin_round(cost);
     }
 
     fn ways(&self) -> Vec<(&'static str, f64)> {

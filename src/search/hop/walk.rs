@@ -4,7 +4,7 @@
 //! displacements are added up, which on landscapes whose unknowns act separately is worth as many steps one after the
 //! other. Which kind of step is tried follows what the kinds earned on this landscape.
 
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, BTreeSet};
 use std::sync::Arc;
 
 use rand::{Rng, RngExt};
@@ -18,8 +18,17 @@ use crate::search::task::Proposal;
 
 /// Starts of a round that share a walker.
 const STEPS_A_WALKER: u64 = 6;
+/// Draws for a step that was not asked for before.
+const DRAWS: u32 = 12;
 /// The most walkers.
 const MOST_WALKERS: u64 = 32;
+
+/// How much of its share at the beginning a kind of step keeps whatever it earns.
+const FLOOR: f64 = 0.35;
+/// Descents after which what steps earned counts half.
+const MEMORY: f64 = 300.0;
+/// Descents that each kind is trusted with: fewer would make the choice a lottery.
+const TRUST: f64 = 10.0;
 
 /// Kinds of step, each with its share at the beginning.
 const STEPS: [(Step, f64); 9] = [
@@ -68,6 +77,8 @@ struct Walker {
     /// Displacements that led down from places that it has left meanwhile.
     gains: Vec<Vec<f64>>,
     last_gain: Option<Vec<f64>>,
+    /// Single values that were taken from other minima, by slot and rounded value.
+    asked: BTreeSet<(usize, i64)>,
 }
 
 #[derive(Clone, Debug)]
@@ -83,8 +94,7 @@ impl Walks {
     /// No walk has begun.
     pub fn new(structure: &Structure) -> Self {
         let n = structure.n_unknowns();
-        // Too few evaluations to learn from would make the choice a lottery: each kind is trusted for some descents.
-        let steps = Earnings::new(&STEPS.map(|step| step.1), 0.35, 20_000.0, 400.0);
+        let steps = Earnings::new(&STEPS.map(|step| step.1), FLOOR);
         Walks {
             walkers: Vec::new(),
             flights: BTreeMap::new(),
@@ -92,6 +102,11 @@ impl Walks {
             steps,
             patience: (100 + 20 * n as u32).min(1000),
         }
+    }
+
+    /// A round is drawn up; a descent costs so many evaluations now.
+    pub fn begin_round(&mut self, cost: f64) {
+        self.steps.remember(MEMORY * cost, TRUST * cost);
     }
 
     /// The next step of a round.
@@ -168,8 +183,24 @@ impl Walks {
 }
 
 impl Walker {
+    /// Whether a point differs from where the walker stands by more than one unknown, or by a value of one unknown that it
+    /// has not asked for; which is then noted.
+    fn is_worth_asking(&mut self, structure: &Structure, from: &[f64], at: &[f64]) -> bool {
+        let bin = |slot: usize| (1e4 * at[slot] / structure.scale[slot]).floor() as i64;
+        let apart = |&slot: &usize| structure.difference(slot, at[slot], from[slot]).abs() > 1e-5 * structure.scale[slot];
+        let mut moved = (0..at.len()).filter(apart);
+        match (moved.next(), moved.next()) {
+            (None, _) => false,
+            (Some(slot), None) => self.asked.insert((slot, bin(slot))),
+            _ => true,
+        }
+    }
+
     fn grow_idle(&mut self, patience: u32) {
         self.idle += 1;
+        if self.idle == patience / 2 {
+            self.asked.clear();
+        }
         if self.idle > patience {
             *self = Walker { life: self.life + 1, ..Walker::default() };
         }
@@ -196,7 +227,7 @@ fn join(structure: &Structure, at: &[f64], gains: &[Vec<f64>]) -> Vec<f64> {
     joined
 }
 
-fn make_step(step: Step, scene: &Scene<'_>, walker: &Walker, place: &Place, rng: &mut ChaCha8Rng) -> Vec<f64> {
+fn make_step(step: Step, scene: &Scene<'_>, walker: &mut Walker, place: &Place, rng: &mut ChaCha8Rng) -> Vec<f64> {
     let structure = scene.structure;
     let mut at = place.at.to_vec();
     let other = |rng: &mut ChaCha8Rng| {
@@ -206,8 +237,14 @@ fn make_step(step: Step, scene: &Scene<'_>, walker: &Walker, place: &Place, rng:
     match step {
         Step::Moved(kind) => return kind.apply(structure, &at, 0.1, rng),
         Step::Transplant => {
-            if let Some(other) = other(rng) {
+            for _ in 0..DRAWS {
+                let Some(other) = other(rng) else { break };
+                at.copy_from_slice(&place.at);
                 general::transplant(&mut at, &other, rng);
+                // What a single value led to is known; it is not asked again from here.
+                if walker.is_worth_asking(structure, &place.at, &at) {
+                    break;
+                }
             }
         }
         Step::Difference => {
