@@ -24,9 +24,9 @@ const FIRST: f64 = 0.01;
 const ENOUGH: f64 = 1e-4;
 /// Values that differ by less than this, relative to the larger, differ by rounding.
 const ROUNDING: f64 = 1e-13;
-/// How many times the promised decrease an outlook allows for, and the evaluations before which it allows anything.
-const OUTLOOK: f64 = 8.0;
-const OUTLOOK_FROM: u64 = 4;
+/// How many times the promised decrease an outlook allows for, and the evaluations before which nothing is promised.
+const OUTLOOK: f64 = 16.0;
+const OUTLOOK_FROM: u64 = 3;
 /// Trials along one direction before it is given up.
 const MOST_TRIALS: u32 = 24;
 
@@ -106,6 +106,8 @@ pub struct Descent {
     /// A bound has been touched since the start, so that slots may have to be held.
     touched: bool,
     steepest: bool,
+    /// How much lower the curvature met so far promises to lead.
+    promised: Option<f64>,
     started: bool,
     kind: Option<EndKind>,
 }
@@ -134,6 +136,7 @@ impl Descent {
             cut: false,
             touched: false,
             steepest: true,
+            promised: None,
             started: false,
             kind: None,
         }
@@ -148,6 +151,7 @@ impl Descent {
         self.touched = self.trial.iter().enumerate().any(touches);
         self.evaluations = 0;
         self.history.clear();
+        self.promised = None;
         self.started = false;
         self.kind = None;
     }
@@ -170,10 +174,7 @@ impl Descent {
     /// The value that it may still reach, generously: where it stands, less several times what the curvature met so far
     /// promises. Minus infinity while little is known.
     pub fn outlook(&self) -> f64 {
-        if !self.started || self.steepest || self.evaluations < OUTLOOK_FROM {
-            return f64::NEG_INFINITY;
-        }
-        self.value - OUTLOOK * self.slope.abs()
+        self.promised.map_or(f64::NEG_INFINITY, |promised| self.value - OUTLOOK * promised)
     }
 
     /// The end; of one that has not ended, as if its evaluations were spent.
@@ -227,6 +228,12 @@ impl Descent {
         if self.steepest && factor * self.length * largest(&self.direction) < 1e-10 {
             // A start that is a minimum already: what is left to go is rounding.
             return self.finish(EndKind::Converged);
+        }
+        if self.steepest {
+            // The parabola knows the curvature, of which the first step knew nothing: a start next to a minimum is there at
+            // once.
+            self.promised = Some(-0.5 * slope * factor);
+            return self.shorten(factor.clamp(1e-6, 0.5));
         }
         self.shorten(factor.clamp(0.1, 0.5))
     }
@@ -309,6 +316,8 @@ impl Descent {
             self.history.clear();
             return self.choose_direction();
         }
+        let known = !self.steepest && self.evaluations >= OUTLOOK_FROM;
+        self.promised = known.then_some(-0.5 * self.slope);
         let rounding = -self.slope <= ROUNDING * self.value.abs();
         if !self.steepest && (reach < 1e-9 || reach < 1e-7 && rounding) {
             return self.finish(EndKind::Converged);

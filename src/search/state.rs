@@ -31,7 +31,7 @@ const WORTH_LOWEST: f64 = 5.0;
 const RANKED: usize = 200;
 
 /// The share of evaluations that confirmations may take while the hunt goes on; the rest waits for the closing.
-const CONFIRMING_SHARE: f64 = 0.1;
+const CONFIRMING_SHARE: f64 = 0.05;
 
 /// A hunt between two rounds.
 pub struct Hunt {
@@ -238,14 +238,12 @@ impl Hunt {
         }
     }
 
-    /// Confirmations of the lowest entries that wait, as far as their share of the evaluations goes. The lowest of all
-    /// is confirmed in any case.
+    /// Confirmations of the lowest entries that wait, as far as their share of the evaluations goes.
     fn draw_confirmations(&mut self, work: &mut Vec<Work>) {
         let cost = self.structure.n_unknowns() as f64;
         let under_way = self.asked_to_confirm.len();
         let allowed = CONFIRMING_SHARE * self.evaluations() as f64 - self.confirming as f64 - under_way as f64 * cost;
         let most = (allowed / cost).max(0.0) as usize;
-        let lowest = self.ledger.lowest_entry();
         for entry in self.ledger.unconfirmed(most + under_way) {
             if self.asked_to_confirm.contains(&entry) {
                 continue;
@@ -253,12 +251,6 @@ impl Hunt {
             let Some(at) = self.ledger.point(entry) else { continue };
             self.asked_to_confirm.insert(entry);
             work.push(Work::Confirm { entry, at });
-        }
-        if let Some(lowest) = lowest.filter(|&entry| !self.ledger.is_confirmed(entry))
-            && self.asked_to_confirm.insert(lowest)
-            && let Some(at) = self.ledger.point(lowest)
-        {
-            work.push(Work::Confirm { entry: lowest, at });
         }
     }
 }

@@ -32,14 +32,14 @@ const TRUST: f64 = 10.0;
 
 /// Kinds of step, each with its share at the beginning.
 const STEPS: [(Step, f64); 9] = [
-    (Step::Moved(Move::One), 0.1),
-    (Step::Moved(Move::Pair), 0.05),
-    (Step::Moved(Move::Afresh), 0.15),
-    (Step::Moved(Move::Some), 0.1),
-    (Step::Moved(Move::All), 0.1),
-    (Step::Transplant, 0.2),
-    (Step::Difference, 0.1),
-    (Step::Repeat, 0.1),
+    (Step::Moved(Move::One), 0.08),
+    (Step::Moved(Move::Pair), 0.04),
+    (Step::Moved(Move::Afresh), 0.2),
+    (Step::Moved(Move::Some), 0.08),
+    (Step::Moved(Move::All), 0.06),
+    (Step::Transplant, 0.27),
+    (Step::Difference, 0.12),
+    (Step::Repeat, 0.05),
     (Step::Carry, 0.1),
 ];
 
