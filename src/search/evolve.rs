@@ -116,7 +116,8 @@ impl Evolve {
             Some(&entry) => scene.ledger.point(entry),
             None => None,
         };
-        let second = second.unwrap_or_else(|| self.population[rng.random_range(0..self.population.len())].place.at.clone());
+        let second =
+            second.unwrap_or_else(|| self.population[rng.random_range(0..self.population.len())].place.at.clone());
         let mut at = parent.place.at.to_vec();
         let chosen = rng.random_range(0..at.len());
         for (slot, x) in at.iter_mut().enumerate() {
@@ -208,28 +209,27 @@ impl Proposer for Evolve {
         self.next_mark += 1;
         let cloud = !scene.structure.clouds.is_empty();
         let mut flight = Flight { age: self.age, varied: None, beginning: false };
-        let proposal = if self.population.len() < FEWEST
-            || (self.population.len() < self.capacity && rng.random::<f64>() < 0.5)
-        {
-            flight.beginning = true;
-            self.begin(scene, rng)
-        } else if rng.random::<f64>() < MUTANTS {
-            self.mutate(scene, rng)
-        } else if cloud {
-            let mother = self.tournament(rng).place.at.clone();
-            let father = self.population[rng.random_range(0..self.population.len())].place.at.clone();
-            Proposal::Spliced { mother, father }
-        } else {
-            let factors = self.draw_factors(rng);
-            let parent = &self.population[rng.random_range(0..self.population.len())];
-            flight.varied = Some((parent.place.value, factors));
-            let mut at = self.vary(scene, factors, parent, rng);
-            if at[..] == parent.place.at[..] {
-                general::one(scene.structure, &mut at, rng);
-            }
-            scene.structure.bring_inside(&mut at);
-            Proposal::Point(at.into())
-        };
+        let proposal =
+            if self.population.len() < FEWEST || (self.population.len() < self.capacity && rng.random::<f64>() < 0.5) {
+                flight.beginning = true;
+                self.begin(scene, rng)
+            } else if rng.random::<f64>() < MUTANTS {
+                self.mutate(scene, rng)
+            } else if cloud {
+                let mother = self.tournament(rng).place.at.clone();
+                let father = self.population[rng.random_range(0..self.population.len())].place.at.clone();
+                Proposal::Spliced { mother, father }
+            } else {
+                let factors = self.draw_factors(rng);
+                let parent = &self.population[rng.random_range(0..self.population.len())];
+                flight.varied = Some((parent.place.value, factors));
+                let mut at = self.vary(scene, factors, parent, rng);
+                if at[..] == parent.place.at[..] {
+                    general::one(scene.structure, &mut at, rng);
+                }
+                scene.structure.bring_inside(&mut at);
+                Proposal::Point(at.into())
+            };
         // A child above the worst member of a full population has no place.
         let full = self.population.len() >= self.capacity;
         let ceiling = self.population.last().filter(|_| full).map_or(f64::INFINITY, |worst| worst.place.value);

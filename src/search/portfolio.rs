@@ -74,11 +74,22 @@ impl Portfolio {
     }
 
     /// The next task. `turns` counts the tasks of the round by heuristic.
-    pub fn propose(&mut self, scene: &Scene<'_>, turns: &mut [u64; Heuristic::ALL.len()], rng: &mut ChaCha8Rng) -> Work {
+    pub fn propose(
+        &mut self,
+        scene: &Scene<'_>,
+        turns: &mut [u64; Heuristic::ALL.len()],
+        rng: &mut ChaCha8Rng,
+    ) -> Work {
         let heuristic = self.schedule.next();
         self.schedule.begin(heuristic);
         let Some(member) = self.member(heuristic) else {
-            return Work::Descend { heuristic, proposal: Proposal::Uniform, mark: 0, fill: false, ceiling: f64::INFINITY };
+            return Work::Descend {
+                heuristic,
+                proposal: Proposal::Uniform,
+                mark: 0,
+                fill: false,
+                ceiling: f64::INFINITY,
+            };
         };
         let turn = turns[heuristic.number()];
         turns[heuristic.number()] += 1;
@@ -106,8 +117,7 @@ impl Portfolio {
     /// Counts fillings.
     pub fn count_fillings(&mut self, (tried, moved): (u32, u32)) {
         let fade = 0.998_f64;
-        self.fillings =
-            (fade * self.fillings.0 + f64::from(tried), fade * self.fillings.1 + f64::from(moved));
+        self.fillings = (fade * self.fillings.0 + f64::from(tried), fade * self.fillings.1 + f64::from(moved));
     }
 
     /// The account of evaluations by heuristic.

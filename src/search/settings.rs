@@ -31,8 +31,7 @@ impl Heuristic {
     ];
 
     /// Those that a mix may name.
-    pub const MEMBERS: [Heuristic; 4] =
-        [Heuristic::Multistart, Heuristic::Anneal, Heuristic::Evolve, Heuristic::Hop];
+    pub const MEMBERS: [Heuristic; 4] = [Heuristic::Multistart, Heuristic::Anneal, Heuristic::Evolve, Heuristic::Hop];
 
     /// The name on the command line and in files.
     pub fn name(self) -> &'static str {

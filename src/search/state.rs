@@ -76,8 +76,7 @@ impl Hunt {
         let mut rng = stream(self.settings.seed, round, 0, Purpose::Round);
         self.portfolio.begin_round();
         while work.len() < size && (work.is_empty() || self.has_room()) {
-            let scene =
-                Scene { structure: &self.structure, ledger: &self.ledger, met: &self.met, round };
+            let scene = Scene { structure: &self.structure, ledger: &self.ledger, met: &self.met, round };
             work.push(self.portfolio.propose(&scene, &mut turns, &mut rng));
         }
         work.into_iter().enumerate().map(|(number, work)| Task { round, number: number as u64, work }).collect()
@@ -234,7 +233,13 @@ impl Hunt {
             let point = Proposal::Point(self.settings.given[self.given_drawn].clone().into());
             self.given_drawn += 1;
             self.portfolio.begin_given();
-            work.push(Work::Descend { heuristic: Heuristic::Given, proposal: point, mark: 0, fill: false, ceiling: f64::INFINITY });
+            work.push(Work::Descend {
+                heuristic: Heuristic::Given,
+                proposal: point,
+                mark: 0,
+                fill: false,
+                ceiling: f64::INFINITY,
+            });
         }
     }
 

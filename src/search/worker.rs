@@ -258,9 +258,7 @@ impl<'a> Worker<'a> {
                     Finding::Met { heuristic, mark, candidate }
                 };
                 match end.kind {
-                    EndKind::OutOfBudget if job.abandoned => {
-                        Finding::Lost { heuristic, mark, reason: Lost::Abandoned }
-                    }
+                    EndKind::OutOfBudget if job.abandoned => Finding::Lost { heuristic, mark, reason: Lost::Abandoned },
                     EndKind::Converged => met(false),
                     EndKind::Stalled if shop.kinked => met(true),
                     EndKind::Stalled => Finding::Lost { heuristic, mark, reason: Lost::Stalled },

@@ -38,7 +38,10 @@ fn main() {
     let seeds: u64 = option("--seeds").map_or(20, |text| text.parse().expect("a number of seeds"));
     let mixes = option("--mixes").unwrap_or_else(|| "default multistart anneal evolve hop".to_string());
     let scale: f64 = option("--scale").map_or(1.0, |text| text.parse().expect("a factor"));
-    println!("{:<18} {:<12} {:>7} {:>10} {:>10} {:>10} {:>9}  hit by", "problem", "mix", "hits", "mean", "median", "goal", "seconds");
+    println!(
+        "{:<18} {:<12} {:>7} {:>10} {:>10} {:>10} {:>9}  hit by",
+        "problem", "mix", "hits", "mean", "median", "goal", "seconds"
+    );
     for case in landscapes::all() {
         if only.as_ref().is_some_and(|names| !names.iter().any(|name| case.name.starts_with(name.as_str()))) {
             continue;

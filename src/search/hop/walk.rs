@@ -4,7 +4,7 @@
 //! displacements are added up, which on landscapes whose unknowns act separately is worth as many steps one after the
 //! other. Which kind of step is tried follows what the kinds earned on this landscape.
 
-use std::collections::{BTreeMap, BTreeSet};
+use std::collections::{BTreeMap, BTreeSet, VecDeque};
 use std::sync::Arc;
 
 use rand::{Rng, RngExt};
@@ -23,6 +23,14 @@ const DRAWS: u32 = 12;
 /// The most walkers.
 const MOST_WALKERS: u64 = 32;
 
+/// Displacements that are remembered.
+const LINKS: usize = 60;
+/// Other minima that a mean is taken with at most, and how many of the lowest they are drawn from.
+const MOST_PARENTS: usize = 8;
+const LOW: usize = 50;
+/// The share of steps whose descents are seen through even if they lead higher, so that there are displacements.
+const SEEN_THROUGH: f64 = 0.15;
+
 /// How much of its share at the beginning a kind of step keeps whatever it earns.
 const FLOOR: f64 = 0.35;
 /// Descents after which what steps earned counts half.
@@ -31,15 +39,16 @@ const MEMORY: f64 = 300.0;
 const TRUST: f64 = 10.0;
 
 /// Kinds of step, each with its share at the beginning.
-const STEPS: [(Step, f64); 9] = [
+const STEPS: [(Step, f64); 10] = [
     (Step::Moved(Move::One), 0.08),
     (Step::Moved(Move::Pair), 0.04),
     (Step::Moved(Move::Afresh), 0.2),
     (Step::Moved(Move::Some), 0.08),
     (Step::Moved(Move::All), 0.06),
     (Step::Transplant, 0.27),
-    (Step::Difference, 0.12),
-    (Step::Repeat, 0.05),
+    (Step::Difference, 0.1),
+    (Step::Mean, 0.08),
+    (Step::Link, 0.12),
     (Step::Carry, 0.1),
 ];
 
@@ -51,8 +60,12 @@ enum Step {
     Transplant,
     /// The difference of two other minima is added.
     Difference,
-    /// The last displacement that led down is made again.
-    Repeat,
+    /// The mean with some of the lowest minima (multi-parent intermediate recombination, Beyer 1995): where wells lie on a
+    /// bowl, it lies deeper in the bowl.
+    Mean,
+    /// A displacement between neighbouring minima, met lately on any walk, is made again from here, once or twice, forth or
+    /// back: wells often repeat along the same few directions, whatever the axes.
+    Link,
     /// The last displacement of one unknown that led down is made in another unknown: wells of one family are often
     /// equally far apart.
     Carry,
@@ -66,6 +79,8 @@ pub struct Walks {
     next_mark: u64,
     steps: Earnings,
     patience: u32,
+    /// Displacements from one minimum to the next, the latest last.
+    links: VecDeque<Vec<f64>>,
 }
 
 #[derive(Clone, Debug, Default)]
@@ -100,6 +115,7 @@ impl Walks {
             flights: BTreeMap::new(),
             next_mark: 0,
             steps,
+            links: VecDeque::new(),
             patience: (100 + 20 * n as u32).min(1000),
         }
     }
@@ -125,13 +141,16 @@ impl Walks {
             }
             Some(place) => {
                 let kind = self.steps.choose(rng.random::<f64>());
-                (point(structure, make_step(STEPS[kind].0, scene, walker, place, rng)), Some(kind))
+                (point(structure, make_step(STEPS[kind].0, &self.links, scene, walker, place, rng)), Some(kind))
             }
         };
         let mark = self.next_mark;
         self.next_mark += 1;
         // Only what lies below the place is of use.
-        let ceiling = base.as_ref().map_or(f64::INFINITY, |base| base.value);
+        let ceiling = match &base {
+            Some(base) if rng.random::<f64>() >= SEEN_THROUGH => base.value,
+            _ => f64::INFINITY,
+        };
         self.flights.insert(mark, Flight { walker: number, life: walker.life, base, step });
         Proposed { proposal, mark, fill: false, ceiling }
     }
@@ -139,6 +158,14 @@ impl Walks {
     /// The result of a step.
     pub fn arrive(&mut self, scene: &Scene<'_>, arrival: Arrival) {
         let Some(flight) = self.flights.remove(&arrival.mark) else { return };
+        if let (Some(place), Some(base), Some(_)) = (&arrival.place, &flight.base, flight.step)
+            && place.entry != base.entry
+        {
+            if self.links.len() >= LINKS {
+                self.links.pop_front();
+            }
+            self.links.push_back(displacement(scene.structure, place, base));
+        }
         let walker = &mut self.walkers[flight.walker];
         let improved = match (&arrival.place, &flight.base) {
             (Some(place), Some(base)) => place.entry != base.entry && base.is_above(place.value),
@@ -158,9 +185,7 @@ impl Walks {
             walker.place = Some(place);
             return;
         };
-        let shift = |to: &Place, from: &Place| -> Vec<f64> {
-            (0..to.at.len()).map(|slot| scene.structure.difference(slot, to.at[slot], from.at[slot])).collect()
-        };
+        let shift = |to: &Place, from: &Place| displacement(scene.structure, to, from);
         if place.entry != current.entry && current.is_above(place.value) {
             if let Some(base) = flight.base {
                 walker.last_gain = Some(shift(&place, &base));
@@ -187,7 +212,8 @@ impl Walker {
     /// has not asked for; which is then noted.
     fn is_worth_asking(&mut self, structure: &Structure, from: &[f64], at: &[f64]) -> bool {
         let bin = |slot: usize| (1e4 * at[slot] / structure.scale[slot]).floor() as i64;
-        let apart = |&slot: &usize| structure.difference(slot, at[slot], from[slot]).abs() > 1e-5 * structure.scale[slot];
+        let apart =
+            |&slot: &usize| structure.difference(slot, at[slot], from[slot]).abs() > 1e-5 * structure.scale[slot];
         let mut moved = (0..at.len()).filter(apart);
         match (moved.next(), moved.next()) {
             (None, _) => false,
@@ -207,6 +233,10 @@ impl Walker {
     }
 }
 
+fn displacement(structure: &Structure, to: &Place, from: &Place) -> Vec<f64> {
+    (0..to.at.len()).map(|slot| structure.difference(slot, to.at[slot], from.at[slot])).collect()
+}
+
 fn point(structure: &Structure, mut at: Vec<f64>) -> Proposal {
     structure.bring_inside(&mut at);
     Proposal::Point(Arc::from(at))
@@ -217,9 +247,10 @@ fn point(structure: &Structure, mut at: Vec<f64>) -> Proposal {
 fn join(structure: &Structure, at: &[f64], gains: &[Vec<f64>]) -> Vec<f64> {
     let mut joined = at.to_vec();
     for (slot, x) in joined.iter_mut().enumerate() {
-        let largest = gains.iter().map(|gain| gain[slot]).fold(0.0, |most: f64, shift| {
-            if shift.abs() > most.abs() { shift } else { most }
-        });
+        let largest = gains
+            .iter()
+            .map(|gain| gain[slot])
+            .fold(0.0, |most: f64, shift| if shift.abs() > most.abs() { shift } else { most });
         if largest.abs() > 1e-6 * structure.scale[slot] {
             *x += largest;
         }
@@ -227,7 +258,14 @@ fn join(structure: &Structure, at: &[f64], gains: &[Vec<f64>]) -> Vec<f64> {
     joined
 }
 
-fn make_step(step: Step, scene: &Scene<'_>, walker: &mut Walker, place: &Place, rng: &mut ChaCha8Rng) -> Vec<f64> {
+fn make_step(
+    step: Step,
+    links: &VecDeque<Vec<f64>>,
+    scene: &Scene<'_>,
+    walker: &mut Walker,
+    place: &Place,
+    rng: &mut ChaCha8Rng,
+) -> Vec<f64> {
     let structure = scene.structure;
     let mut at = place.at.to_vec();
     let other = |rng: &mut ChaCha8Rng| {
@@ -252,9 +290,24 @@ fn make_step(step: Step, scene: &Scene<'_>, walker: &mut Walker, place: &Place, 
                 general::difference(&mut at, &first, &second, rng);
             }
         }
-        Step::Repeat => match &walker.last_gain {
-            Some(gain) => at.iter_mut().zip(gain).for_each(|(x, shift)| *x += shift),
-            None => general::some(structure, &mut at, rng),
+        Step::Mean => {
+            let n_parents = rng.random_range(1..=MOST_PARENTS);
+            for parent in 0..n_parents {
+                let chosen = rng.random_range(0..scene.ledger.len().clamp(1, LOW));
+                let Some(entry) = scene.ledger.entries().nth(chosen) else { continue };
+                // The running mean, taken the short way round for cyclic unknowns.
+                let weight = 1.0 / (parent + 2) as f64;
+                for (slot, (x, other)) in at.iter_mut().zip(entry.at()).enumerate() {
+                    *x += weight * structure.difference(slot, *other, *x);
+                }
+            }
+        }
+        Step::Link => match links.get(rng.random_range(0..LINKS)) {
+            Some(link) => {
+                let factor = [1.0, 1.0, -1.0, -1.0, 2.0, -2.0][rng.random_range(0..6)];
+                at.iter_mut().zip(link).for_each(|(x, shift)| *x += factor * shift);
+            }
+            None => general::all(structure, &mut at, rng),
         },
         Step::Carry => match &walker.last_gain {
             Some(gain) => carry(structure, &mut at, gain, rng),
@@ -271,7 +324,8 @@ fn make_step(step: Step, scene: &Scene<'_>, walker: &mut Walker, place: &Place, 
 /// The largest displacement of one unknown, made in another, either way.
 fn carry(structure: &Structure, at: &mut [f64], gain: &[f64], rng: &mut impl Rng) {
     let relative = |slot: usize| gain[slot] / structure.scale[slot];
-    let largest = (0..gain.len()).fold(0, |best, slot| if relative(slot).abs() > relative(best).abs() { slot } else { best });
+    let largest =
+        (0..gain.len()).fold(0, |best, slot| if relative(slot).abs() > relative(best).abs() { slot } else { best });
     let slot = rng.random_range(0..at.len());
     let sign = if rng.random::<bool>() { 1.0 } else { -1.0 };
     at[slot] += sign * relative(largest) * structure.scale[slot];

@@ -100,8 +100,7 @@ fn place(cloud: &Cloud, size: (f64, f64), rng: &mut impl Rng) -> Vec<Point> {
     }
     placed.sort_by_key(|entry| entry.0);
     // Each row takes the next point of its kind.
-    let mut next: Vec<usize> =
-        (0..cloud.n_kinds).map(|kind| placed.partition_point(|entry| entry.0 < kind)).collect();
+    let mut next: Vec<usize> = (0..cloud.n_kinds).map(|kind| placed.partition_point(|entry| entry.0 < kind)).collect();
     cloud
         .kinds
         .iter()

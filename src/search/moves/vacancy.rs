@@ -32,8 +32,9 @@ pub fn vacancies(points: &[Point], dimensions: usize, contact: f64) -> Vec<Vacan
     let near: Vec<Vec<usize>> = (0..points.len())
         .map(|row| {
             let reach = 1.6 * contact;
-            let mut near: Vec<usize> =
-                (0..points.len()).filter(|&other| other != row && distance(&points[row], &points[other]) < reach).collect();
+            let mut near: Vec<usize> = (0..points.len())
+                .filter(|&other| other != row && distance(&points[row], &points[other]) < reach)
+                .collect();
             near.sort_by_key(|&other| (Total(distance(&points[row], &points[other])), other));
             near
         })
@@ -183,7 +184,11 @@ impl Filling {
         let centroid = centroid_of(&points);
         let contacts = |row: usize| {
             let reach = CONTACT * self.contact;
-            points.iter().enumerate().filter(|&(other, point)| other != row && distance(point, &points[row]) < reach).count()
+            points
+                .iter()
+                .enumerate()
+                .filter(|&(other, point)| other != row && distance(point, &points[row]) < reach)
+                .count()
         };
         // Fewest contacts first; of equals the outermost.
         let mut rows: Vec<(usize, Total, usize)> =
@@ -224,7 +229,8 @@ impl Filling {
             let own = others.swap_remove(row);
             let touching = |at: &Point| distance(at, &own) < 0.4 * self.contact;
             let places = vacancies(&others, self.cloud.dimensions, self.contact);
-            self.places = places.into_iter().map(|vacancy| vacancy.at).filter(|at| !touching(at)).take(PLACES).collect();
+            self.places =
+                places.into_iter().map(|vacancy| vacancy.at).filter(|at| !touching(at)).take(PLACES).collect();
             self.places.reverse();
         }
     }
