@@ -17,12 +17,20 @@ use super::settings::{Heuristic, Mix};
 use super::structure::Structure;
 use super::task::{Proposal, Work};
 
-/// How much of its share at the beginning a heuristic keeps whatever it earns.
-const FLOOR: f64 = 0.3;
 /// Descents after which earnings count half: at least so many, and this part of all evaluations so far.
 const MEMORY: (f64, f64) = (400.0, 0.2);
 /// Descents that each is trusted with at first.
 const TRUST: f64 = 40.0;
+
+/// The share that a long hunt keeps for a heuristic whatever it earns.
+fn hedge(heuristic: Heuristic) -> f64 {
+    match heuristic {
+        Heuristic::Hop => 0.35,
+        Heuristic::Evolve => 0.2,
+        Heuristic::Anneal | Heuristic::Multistart => 0.04,
+        Heuristic::Given | Heuristic::Survey => 0.0,
+    }
+}
 
 /// The heuristics of a hunt with their accounts.
 pub struct Portfolio {
@@ -38,7 +46,8 @@ pub struct Portfolio {
 impl Portfolio {
     /// A portfolio in which nothing was proposed.
     pub fn new(mix: &Mix, survey: f64, structure: &Structure) -> Self {
-        let beginning: Vec<f64> = mix.members().iter().map(|member| member.1).collect();
+        let members: Vec<(f64, f64)> =
+            mix.members().iter().map(|&(heuristic, share)| (share, hedge(heuristic))).collect();
         let member = |&(heuristic, _): &(Heuristic, f64)| -> Box<dyn Proposer> {
             match heuristic {
                 Heuristic::Anneal => Box::new(Anneal::new(structure)),
@@ -53,7 +62,7 @@ impl Portfolio {
             mix: mix.clone(),
             survey,
             schedule,
-            earnings: Earnings::new(&beginning, FLOOR),
+            earnings: Earnings::new(&members),
             members: mix.members().iter().map(member).collect(),
             fillings: (0.0, 0.0),
         }
@@ -66,7 +75,8 @@ impl Portfolio {
         let cost = spent as f64 / descents.max(1) as f64;
         let memory = (MEMORY.0 * cost).max(MEMORY.1 * spent as f64);
         self.earnings.remember(memory, TRUST * cost);
-        self.members.iter_mut().for_each(|member| member.begin_round(memory, cost));
+        self.earnings.grow(descents);
+        self.members.iter_mut().for_each(|member| member.begin_round(memory, cost, descents));
         if self.mix.is_fixed() {
             return;
         }

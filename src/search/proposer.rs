@@ -79,8 +79,9 @@ pub trait Proposer {
     /// What became of a start that it proposed.
     fn arrive(&mut self, scene: &Scene<'_>, arrival: Arrival, rng: &mut ChaCha8Rng);
 
-    /// A round is drawn up: a good memory of earnings is so many evaluations now, and a descent costs so many.
-    fn begin_round(&mut self, _memory: f64, _cost: f64) {}
+    /// A round is drawn up: a good memory of earnings is so many evaluations now, a descent costs so many, and so many
+    /// descents have ended.
+    fn begin_round(&mut self, _memory: f64, _cost: f64, _descents: u64) {}
 
     /// Shares between its own ways, with their names, for whoever watches.
     fn ways(&self) -> Vec<(&'static str, f64)> {

@@ -24,11 +24,9 @@ use walk::Walks;
 /// The ways with their names.
 const NAMES: [&str; WAYS as usize] = ["walk", "tempered", "departure", "symmetric"];
 const WAYS: u64 = 4;
-/// Their shares at the beginning, without and with clouds.
-const GENERAL: [f64; WAYS as usize] = [0.8, 0.12, 0.08, 0.0];
-const CLOUD: [f64; WAYS as usize] = [0.0, 0.35, 0.15, 0.5];
-/// How much of the share at the beginning a way keeps whatever it earns.
-const FLOOR: f64 = 0.4;
+/// Their shares at the beginning and the least of a long hunt, without and with clouds.
+const GENERAL: [(f64, f64); WAYS as usize] = [(0.86, 0.3), (0.08, 0.15), (0.06, 0.12), (0.0, 0.0)];
+const CLOUD: [(f64, f64); WAYS as usize] = [(0.0, 0.0), (0.35, 0.2), (0.15, 0.12), (0.5, 0.2)];
 /// Descents that each way is trusted with at first.
 const TRUST: f64 = 30.0;
 /// How many of the lowest minima are models for the size of symmetric starts.
@@ -49,7 +47,7 @@ impl Hop {
     pub fn new(structure: &Structure) -> Self {
         let shares = if structure.clouds.is_empty() { GENERAL } else { CLOUD };
         Hop {
-            ways: Earnings::new(&shares, FLOOR),
+            ways: Earnings::new(&shares),
             walks: Walks::new(structure),
             tempered: Tempered::new(structure),
             departures: Departures::new(structure),
@@ -92,8 +90,9 @@ impl Proposer for Hop {
         }
     }
 
-    fn begin_round(&mut self, memory: f64, cost: f64) {
+    fn begin_round(&mut self, memory: f64, cost: f64, descents: u64) {
         self.ways.remember(memory, TRUST * cost);
+        self.ways.grow(descents);
         self.walks.begin_round(cost);
     }
 

@@ -31,8 +31,6 @@ const LOW: usize = 50;
 /// The share of steps whose descents are seen through even if they lead higher, so that there are displacements.
 const SEEN_THROUGH: f64 = 0.15;
 
-/// How much of its share at the beginning a kind of step keeps whatever it earns.
-const FLOOR: f64 = 0.35;
 /// Descents after which what steps earned counts half.
 const MEMORY: f64 = 300.0;
 /// Descents that each kind is trusted with: fewer would make the choice a lottery.
@@ -109,7 +107,7 @@ impl Walks {
     /// No walk has begun.
     pub fn new(structure: &Structure) -> Self {
         let n = structure.n_unknowns();
-        let steps = Earnings::new(&STEPS.map(|step| step.1), FLOOR);
+        let steps = Earnings::new(&STEPS.map(|step| (step.1, 0.5 * step.1)));
         Walks {
             walkers: Vec::new(),
             flights: BTreeMap::new(),
