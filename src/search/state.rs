@@ -19,9 +19,9 @@ use super::task::{Finding, Proposal, Task, TaskResult, Work};
 
 /// Tasks of the first rounds. Small, so that walks get deep early; the rounds grow with the evaluations spent, since many
 /// threads need many tasks and by then depth is cheap.
-const FIRST_ROUND: f64 = 8.0;
+const FIRST_ROUND: f64 = 4.0;
 /// A round spends about this part of the evaluations so far.
-const ROUND_SHARE: f64 = 0.005;
+const ROUND_SHARE: f64 = 0.01;
 /// The most tasks of a round.
 const LARGEST_ROUND: f64 = 2048.0;
 
