@@ -97,7 +97,7 @@ impl Mix {
     /// ```
     /// use thalweg::search::{Heuristic, Mix};
     /// let mix = Mix::read("hop:3,multistart").unwrap();
-    /// assert_eq!(mix.members(), [(Heuristic::Hop, 0.85), (Heuristic::Multistart, 0.25)]);
+    /// assert_eq!(mix.members(), [(Heuristic::Hop, 0.88), (Heuristic::Multistart, 0.25)]);
     /// assert!(mix.is_fixed() && !Mix::read("hop,evolve").unwrap().is_fixed());
     /// assert!(Mix::read("jump").is_err());
     /// ```
@@ -146,8 +146,8 @@ impl Default for Mix {
     fn default() -> Self {
         let members = vec![
             (Heuristic::Multistart, 0.03),
-            (Heuristic::Anneal, 0.02),
-            (Heuristic::Evolve, 0.1),
+            (Heuristic::Anneal, 0.01),
+            (Heuristic::Evolve, 0.08),
             (Heuristic::Hop, 0.79),
         ];
         Mix { members, fixed: false }

@@ -38,16 +38,16 @@ const TRUST: f64 = 10.0;
 
 /// Kinds of step, each with its share at the beginning.
 const STEPS: [(Step, f64); 10] = [
-    (Step::Moved(Move::One), 0.08),
-    (Step::Moved(Move::Pair), 0.04),
-    (Step::Moved(Move::Afresh), 0.2),
-    (Step::Moved(Move::Some), 0.08),
-    (Step::Moved(Move::All), 0.06),
-    (Step::Transplant, 0.27),
-    (Step::Difference, 0.1),
-    (Step::Mean, 0.08),
-    (Step::Link, 0.12),
-    (Step::Carry, 0.1),
+    (Step::Moved(Move::One), 0.07),
+    (Step::Moved(Move::Pair), 0.03),
+    (Step::Moved(Move::Afresh), 0.26),
+    (Step::Moved(Move::Some), 0.06),
+    (Step::Moved(Move::All), 0.05),
+    (Step::Transplant, 0.33),
+    (Step::Difference, 0.08),
+    (Step::Mean, 0.05),
+    (Step::Link, 0.06),
+    (Step::Carry, 0.12),
 ];
 
 #[derive(Clone, Copy, Debug, PartialEq)]
