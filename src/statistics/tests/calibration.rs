@@ -1,0 +1,119 @@
+//! How often the intervals hold the truth, by simulation of surveys of known landscapes.
+//!
+//! The table that comes out stands in tests/data/statistics and, word for word, in DEVELOPERS.md. `BLESS=1` rewrites the
+//! former.
+
+use rand::RngExt;
+
+use crate::base::random::{Purpose, stream};
+use crate::numbers::functions::real_power;
+use crate::statistics::tests::data_path;
+use crate::statistics::{Confidence, Frequencies, Interval, SurveyFigures, Unconverged};
+
+const SURVEYS: u64 = 1000;
+
+/// The shares of basins, largest first, by a law.
+fn shares(law: &str, basins: usize, parameter: f64) -> Vec<f64> {
+    let size = |i: usize| match law {
+        "equal" => 1.0,
+        "geometric" => real_power(parameter, i as f64),
+        "power" => real_power((i + 1) as f64, -parameter),
+        _ => panic!("no such law"),
+    };
+    let sizes: Vec<f64> = (0..basins).map(size).collect();
+    let sum: f64 = sizes.iter().sum();
+    sizes.iter().map(|size| size / sum).collect()
+}
+
+/// Esty's (1983) normal interval, for comparison.
+fn esty(met: &Frequencies) -> Interval {
+    let n = met.starts() as f64;
+    let (f1, f2) = (met.met_exactly(1) as f64, met.met_exactly(2) as f64);
+    let half = 1.959963984540054 * (f1 * (1.0 - f1 / n) + 2.0 * f2).max(0.0).sqrt() / n;
+    Interval { low: 1.0 - f1 / n - half, high: 1.0 - f1 / n + half }
+}
+
+/// Of the simulated surveys of one landscape: shares of intervals that hold the truth, and means.
+struct Row {
+    covered: f64,
+    coverage: f64,
+    width: f64,
+    esty: f64,
+    chao: f64,
+}
+
+fn simulate(shares: &[f64], starts: usize, landscape: u64) -> Row {
+    let mut cumulated = Vec::with_capacity(shares.len());
+    let mut sum = 0.0;
+    for share in shares {
+        sum += share;
+        cumulated.push(sum);
+    }
+    let mut row = Row { covered: 0.0, coverage: 0.0, width: 0.0, esty: 0.0, chao: 0.0 };
+    let mut counts = vec![0; shares.len()];
+    for survey in 0..SURVEYS {
+        let mut rng = stream(3, landscape, survey, Purpose::Survey);
+        counts.fill(0);
+        for _ in 0..starts {
+            let at = sum * rng.random::<f64>();
+            counts[cumulated.partition_point(|&end| end <= at).min(shares.len() - 1)] += 1;
+        }
+        let truth: f64 = shares.iter().zip(&counts).filter(|&(_, &count)| count > 0).map(|(share, _)| share).sum();
+        let met = Frequencies::from_counts(&counts, 0, Unconverged::SetAside).unwrap();
+        let normal = esty(&met);
+        let figures = SurveyFigures::new(met, Confidence::NINETY_FIVE);
+        let interval = figures.coverage.unwrap().interval;
+        // The truth is a sum of shares, and 1 of it may have lost its last bits.
+        let holds = |interval: Interval| f64::from(interval.low <= truth + 1e-12 && truth <= interval.high + 1e-12);
+        row.covered += truth;
+        row.coverage += holds(interval);
+        row.width += interval.width();
+        row.esty += holds(normal);
+        row.chao += f64::from(figures.richness.unwrap().interval.contains(shares.len() as f64));
+    }
+    for sum in [&mut row.covered, &mut row.coverage, &mut row.width, &mut row.esty, &mut row.chao] {
+        *sum /= SURVEYS as f64;
+    }
+    row
+}
+
+#[test]
+fn intervals_for_coverage_hold_the_truth() {
+    let landscapes = [
+        ("equal", 5, 0.0),
+        ("equal", 30, 0.0),
+        ("equal", 500, 0.0),
+        ("geometric", 60, 0.5),
+        ("geometric", 60, 0.9),
+        ("geometric", 400, 0.97),
+        ("power", 30, 1.0),
+        ("power", 2000, 1.0),
+        ("power", 2000, 2.0),
+    ];
+    let mut table = String::from("law            basins  starts  covered    holds   width  Esty's  Chao's\n");
+    let mut lowest: f64 = 1.0;
+    for (landscape, (law, basins, parameter)) in landscapes.into_iter().enumerate() {
+        let shares = shares(law, basins, parameter);
+        let name = if law == "equal" { law.to_string() } else { format!("{law} {parameter}") };
+        for (size, starts) in [20, 50, 200, 1000].into_iter().enumerate() {
+            let row = simulate(&shares, starts, (10 * landscape + size) as u64);
+            table += &format!(
+                "{name:<14} {basins:>6} {starts:>7} {:>8.3} {:>5.1} % {:>7.4} {:>5.1} % {:>5.1} %\n",
+                row.covered,
+                100.0 * row.coverage,
+                row.width,
+                100.0 * row.esty,
+                100.0 * row.chao
+            );
+            lowest = lowest.min(row.coverage);
+        }
+    }
+    let path = data_path("calibration.txt");
+    if std::env::var_os("BLESS").is_some() {
+        std::fs::write(&path, &table).unwrap();
+    }
+    assert!(lowest >= 0.93, "a landscape whose intervals hold the truth in {lowest} of surveys:\n{table}");
+    assert_eq!(table, std::fs::read_to_string(path).unwrap_or_default(), "BLESS=1 rewrites");
+    let guide = std::fs::read_to_string(concat!(env!("CARGO_MANIFEST_DIR"), "/DEVELOPERS.md")).unwrap();
+    assert!(guide.contains(&table), "the guide has another table than\n{table}");
+}
