@@ -20,7 +20,7 @@ pub fn gamma_tails(shape: f64, x: f64) -> (f64, f64) {
         return (1.0, 0.0);
     }
     // x^shape exp(-x) / Gamma(shape)
-    let front = exponential(-stirling_error(shape) - deviance(shape, x)) * (shape / TAU).sqrt();
+    let front = exponential(-stirling_error(shape) - deviance(shape, x, shape - x)) * (shape / TAU).sqrt();
     if x < shape + 1.0 {
         let mut term = 1.0 / shape;
         let mut sum = term;

@@ -38,9 +38,9 @@ pub(super) fn stirling_error(x: f64) -> f64 {
     climbed + series
 }
 
-/// `x ln(x/mean) + mean - x` for positive arguments, without cancellation where they are close.
-pub(super) fn deviance(x: f64, mean: f64) -> f64 {
-    let difference = x - mean;
+/// `x ln(x/mean) + mean - x` for positive arguments, without cancellation where they are close. The difference `x - mean`
+/// is given apart, since the caller may know it better.
+pub(super) fn deviance(x: f64, mean: f64, difference: f64) -> f64 {
     if difference.abs() >= 0.1 * (x + mean) {
         return x * logarithm(x / mean) - difference;
     }
@@ -71,11 +71,13 @@ pub(in crate::statistics) fn binomial_mass(hits: f64, misses: f64, chance: f64, 
     if misses == 0.0 {
         return exponential(hits * if other < 0.5 { logarithm_of_one_plus(-other) } else { logarithm(chance) });
     }
+    // Where a chance is next to 1 its own rounding, times the trials, would be the error: the other side knows better.
+    let excess = if chance < 0.5 { hits - trials * chance } else { trials * other - misses };
     let exponent = stirling_error(trials)
         - stirling_error(hits)
         - stirling_error(misses)
-        - deviance(hits, trials * chance)
-        - deviance(misses, trials * other);
+        - deviance(hits, trials * chance, excess)
+        - deviance(misses, trials * other, -excess);
     exponential(exponent) * (trials / (TAU * hits * misses)).sqrt()
 }
 
