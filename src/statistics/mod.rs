@@ -5,12 +5,17 @@
 //! no panic on degenerate input (nothing met, all met once, one basin, ties, nothing hit). Deliberately absent: words
 //! for people (the reports have them), and everything that knows a landscape.
 //!
-//! [`SurveyFigures`] gathers what a survey tells; its parts stand alone too.
+//! [`SurveyFigures`] gathers what a survey tells; its parts stand alone too. Comparisons of trials: [`expected_cost`],
+//! [`hit_distribution`], [`rank_sum`], [`log_rank`], [`friedman`], the profiles; [`adjust_chances`] where several tests are
+//! made at once.
 
 mod interval;
 pub mod laws;
 
 mod proportion;
+mod quantiles;
+mod ranks;
+mod resampling;
 
 mod accumulation;
 mod coverage;
@@ -19,14 +24,31 @@ mod posterior;
 mod richness;
 mod survey;
 
+mod friedman;
+mod multiplicity;
+mod profiles;
+mod rank_sum;
+mod survival;
+mod trials;
+mod trials_needed;
+
 pub use accumulation::{CurvePoint, accumulation};
 pub use coverage::{Coverage, coverage, coverage_interval};
 pub use frequencies::{Frequencies, Unconverged};
+pub use friedman::{ColumnPair, Friedman, friedman};
 pub use interval::{Confidence, Interval, StatisticsError};
+pub use multiplicity::adjust_chances;
 pub use posterior::{Posterior, posterior};
-pub use proportion::exact_interval;
+pub use profiles::{Profile, data_profiles, performance_profiles};
+pub use proportion::{exact_interval, score_interval};
+pub use quantiles::quantiles;
+pub use rank_sum::{NullLaw, RankSum, rank_sum, rank_sum_of_trials};
+pub use ranks::midranks;
 pub use richness::{Richness, richness};
 pub use survey::{Prospect, Share, SurveyFigures};
+pub use survival::{HitStep, LogRank, hit_distribution, log_rank};
+pub use trials::{ExpectedCost, Grounds, Trial, expected_cost};
+pub use trials_needed::trials_needed;
 
 #[cfg(test)]
 mod tests;

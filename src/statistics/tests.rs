@@ -1,6 +1,7 @@
 //! The survey's figures together: reference tables, degenerate surveys, properties; calibration stands apart.
 
 mod calibration;
+mod comparisons;
 
 use std::path::{Path, PathBuf};
 
@@ -16,6 +17,23 @@ pub(super) fn data_path(name: &str) -> PathBuf {
 /// A file of reference values.
 pub(super) fn reference(name: &str) -> serde_json::Value {
     serde_json::from_str(&std::fs::read_to_string(data_path(name)).unwrap()).unwrap()
+}
+
+/// The rows of numbers of a text file of reference values.
+pub(super) fn table(name: &str) -> Vec<Vec<f64>> {
+    let text = std::fs::read_to_string(data_path(name)).unwrap();
+    let rows: Vec<Vec<f64>> = text
+        .lines()
+        .filter(|line| !line.starts_with('#'))
+        .map(|line| line.split_whitespace().map(|word| word.parse().unwrap()).collect())
+        .collect();
+    assert!(rows.len() >= 5, "{name} has rows");
+    rows
+}
+
+/// An array of numbers.
+pub(super) fn numbers(value: &serde_json::Value) -> Vec<f64> {
+    value.as_array().unwrap().iter().map(|number| number.as_f64().unwrap()).collect()
 }
 
 /// The tables of counts: name, frequencies, expected values.

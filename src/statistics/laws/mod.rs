@@ -7,27 +7,16 @@
 mod beta;
 mod gamma;
 mod normal;
+mod range;
 mod stirling;
 
 pub use beta::{Tail, beta_quantile, beta_tails};
 pub use gamma::{chi_square_tail, gamma_tails};
 pub use normal::{normal_quantile, normal_tail};
+pub use range::range_tail;
 pub(super) use stirling::{binomial_mass, exponential_less_one, logarithm_of_one_plus};
 
 #[cfg(test)]
 mod tests {
-    use std::path::Path;
-
-    /// The rows of numbers of a table in tests/data/statistics.
-    pub(super) fn rows(name: &str) -> Vec<Vec<f64>> {
-        let path = Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/data/statistics").join(name);
-        let text = std::fs::read_to_string(path).unwrap();
-        let rows: Vec<Vec<f64>> = text
-            .lines()
-            .filter(|line| !line.starts_with('#'))
-            .map(|line| line.split_whitespace().map(|word| word.parse().unwrap()).collect())
-            .collect();
-        assert!(rows.len() >= 10, "{name} has rows");
-        rows
-    }
+    pub(super) use crate::statistics::tests::table as rows;
 }
