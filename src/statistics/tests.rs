@@ -19,6 +19,18 @@ pub(super) fn reference(name: &str) -> serde_json::Value {
     serde_json::from_str(&std::fs::read_to_string(data_path(name)).unwrap()).unwrap()
 }
 
+/// Demands that a table is the one on file (`BLESS=1` rewrites that) and that the developers' guide has it word for word.
+#[track_caller]
+pub(super) fn tabulated(name: &str, table: &str) {
+    let path = data_path(name);
+    if std::env::var_os("BLESS").is_some() {
+        std::fs::write(&path, table).unwrap();
+    }
+    assert_eq!(table, std::fs::read_to_string(path).unwrap_or_default(), "BLESS=1 rewrites");
+    let guide = std::fs::read_to_string(concat!(env!("CARGO_MANIFEST_DIR"), "/DEVELOPERS.md")).unwrap();
+    assert!(guide.contains(table), "the guide has another table than\n{table}");
+}
+
 /// The rows of numbers of a text file of reference values.
 pub(super) fn table(name: &str) -> Vec<Vec<f64>> {
     let text = std::fs::read_to_string(data_path(name)).unwrap();

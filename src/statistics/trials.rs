@@ -1,9 +1,10 @@
 //! Trials of a heuristic: each spends until it hits the target or its budget ends.
 
+use rand::Rng;
+
 use super::interval::{Confidence, Interval, StatisticsError};
 use super::proportion::exact_interval;
 use super::resampling::{Resampled, bias_corrected_interval};
-use rand::Rng;
 
 /// One trial: what it spent, and whether it ended with a hit. Without one it is censored: the hit would have cost more.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -36,10 +37,16 @@ pub enum Grounds {
     BiasCorrected,
     /// Plain percentiles of resampling (Efron 1979): the correction could not be worked out.
     Percentile,
+    /// Few hits among many trials: the exact interval of Clopper and Pearson (1934) for the chance to hit, with the mean
+    /// costs of hits and of misses as they are. The upper end is finite.
+    FewHits,
     /// No hit: the exact bound of Clopper and Pearson (1934) for the chance to hit, one-sided. Only the lower end says
     /// something.
     NoHit,
 }
+
+/// Below so many hits, where they are no more than the misses, resampling is not asked (by simulation).
+const FEW_HITS: usize = 20;
 
 /// Refuses trials that no statistic can use.
 pub(super) fn check(trials: &[Trial]) -> Result<(), StatisticsError> {
@@ -59,9 +66,11 @@ pub(super) fn check(trials: &[Trial]) -> Result<(), StatisticsError> {
 /// it, unless costs to hit are exponential.
 ///
 /// The interval resamples whole trials from `random`, `resamples` times (1,000 and more make sense), and takes the
-/// bias-corrected and accelerated percentiles of Efron (1987). A resample without a hit is infinite and stays among
-/// the others; where more than the upper side's share is, the upper end is infinite. Without any hit the lower end
-/// divides the mean cost by the upper end of the exact one-sided interval for the chance to hit.
+/// bias-corrected and accelerated percentiles of Efron (1987). With fewer than 20 hits, no more than misses, so many
+/// resamples would hold none or hardly any that the percentiles say nothing, or too little: there the number of hits is
+/// what is uncertain, and with `h` and `m` the mean costs of hits and misses the interval is `h + m (1 - p)/p` for the
+/// chances p of the exact interval. Without any hit the lower end divides the mean cost by the upper end of the exact
+/// one-sided interval. The developers' guide tabulates how often these intervals hold the truth.
 ///
 /// # Errors
 ///
@@ -98,6 +107,14 @@ pub fn expected_cost(
         return Ok(ExpectedCost { cost: f64::INFINITY, hits, trials: n, interval, grounds: Grounds::NoHit });
     }
     let cost = spent / hits as f64;
+    if hits < FEW_HITS && 2 * hits <= n {
+        let of_hits: f64 = trials.iter().filter(|trial| trial.hit).map(|trial| trial.cost).sum::<f64>() / hits as f64;
+        let of_misses = (spent - of_hits * hits as f64) / (n - hits) as f64;
+        let chance = exact_interval(hits as u64, n as u64, confidence)?;
+        let at = |chance: f64| of_hits + of_misses.max(0.0) * (1.0 - chance) / chance;
+        let interval = Interval { low: at(chance.high).min(cost), high: at(chance.low).max(cost) };
+        return Ok(ExpectedCost { cost, hits, trials: n, interval, grounds: Grounds::FewHits });
+    }
     let ratio = |places: &mut dyn Iterator<Item = usize>| {
         let (mut spent, mut hits) = (0.0, 0.0);
         for place in places {
