@@ -17,8 +17,8 @@ pub struct CurvePoint {
     /// The standard error of that, for another survey of the same landscape (unconditional: it does not vanish at the
     /// survey's own size).
     pub standard_error: f64,
-    /// The estimate within its normal deviations, cut to what is possible: from 0 (beyond the survey: from the number
-    /// met) to one basin a start.
+    /// The estimate within its normal deviations, cut to what is possible: from 0 to one basin a start. It is for the
+    /// expected curve of the landscape, which may lie below what this survey met even at its own size.
     pub interval: Interval,
     /// The coverage expected from so many starts.
     pub coverage: f64,
@@ -30,7 +30,8 @@ pub struct CurvePoint {
 /// and Jost 2012), both without bias. Beyond, extrapolation with Chao's estimate of the basins not met (Colwell et al.
 /// 2012; Chao et al. 2014), which assumes those all equally likely to be found: trustworthy to about twice the survey's
 /// size, and a lower bound beyond. The standard error is that of Colwell et al. (2012, eq. 5 and, beyond, the
-/// propagation from the counts of singletons and doubletons); it is too small where Chao's estimate is far too low.
+/// propagation from the counts of singletons and doubletons); it vanishes where every basin was met several times,
+/// and is too small where hardly any is left to be met or Chao's estimate is far too low (the developers' guide tabulates it).
 ///
 /// ```
 /// use thalweg::statistics::{Confidence, Frequencies, Unconverged, accumulation};
@@ -48,8 +49,7 @@ pub fn accumulation(met: &Frequencies, starts: u64, confidence: Confidence) -> O
         if starts <= met.starts() { rarefy(met, starts) } else { extrapolate(met, starts - met.starts()) };
     let standard_error = variance.max(0.0).sqrt();
     let half = confidence.deviations() * standard_error;
-    let least = if starts >= met.starts() { met.basins() as f64 } else { 0.0 };
-    let interval = Interval { low: (basins - half).max(least), high: (basins + half).min(starts as f64) };
+    let interval = Interval { low: (basins - half).max(0.0), high: (basins + half).min(starts as f64) };
     Some(CurvePoint { starts, basins, standard_error, interval, coverage })
 }
 

@@ -42,7 +42,7 @@ pub use posterior::{Posterior, posterior};
 pub use profiles::{Profile, data_profiles, performance_profiles};
 pub use proportion::{exact_interval, score_interval};
 pub use quantiles::quantiles;
-pub use rank_sum::{NullLaw, RankSum, rank_sum, rank_sum_of_trials};
+pub use rank_sum::{NullLaw, RankSum, effect_interval, rank_sum, rank_sum_of_trials};
 pub use ranks::midranks;
 pub use richness::{Richness, richness};
 pub use survey::{Prospect, Share, SurveyFigures};

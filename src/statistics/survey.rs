@@ -1,13 +1,14 @@
 //! All that a survey tells, from the frequencies alone.
 
 use super::accumulation::{CurvePoint, accumulation, new_basins};
-use super::coverage::{Coverage, coverage};
+use super::coverage::{Coverage, coverage, singleton_step};
 use super::frequencies::Frequencies;
 use super::interval::{Confidence, Interval};
 use super::laws::{exponential_less_one, logarithm_of_one_plus};
 use super::posterior::{Posterior, posterior};
 use super::proportion::exact_interval;
 use super::richness::{Richness, richness};
+use crate::numbers::functions::logarithm;
 
 /// What further starts are expected to find.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -103,6 +104,35 @@ impl SurveyFigures {
         let interval = Interval { low: chance(coverage.interval.high), high: chance(coverage.interval.low) };
         let (expected, standard_error) = new_basins(&self.met, further);
         Some(Prospect { starts: further, chance: chance(coverage.improved), interval, expected, standard_error })
+    }
+
+    /// How many starts in all it would take for the expected coverage to reach this share, by the extrapolated curve (Chao and
+    /// Jost 2012): the survey's own where it has that coverage already; none without starts, and where the curve never
+    /// gets there (a share of 1 with any singleton; any higher share with one singleton and no doubleton).
+    ///
+    /// Assumes the basins left equally likely to be found; far beyond the survey's size it errs downwards.
+    ///
+    /// ```
+    /// use thalweg::statistics::{Confidence, Frequencies, SurveyFigures, Unconverged};
+    /// let met = Frequencies::from_counts(&[61, 30, 5, 2, 1, 1], 0, Unconverged::SetAside)?;
+    /// let figures = SurveyFigures::new(met, Confidence::NINETY_FIVE);
+    /// let needed = figures.starts_for(0.99).unwrap();
+    /// assert!(figures.curve(needed).unwrap().coverage >= 0.99 && figures.curve(needed - 1).unwrap().coverage < 0.99);
+    /// # Ok::<(), thalweg::statistics::StatisticsError>(())
+    /// ```
+    pub fn starts_for(&self, share: f64) -> Option<u64> {
+        let covered = self.coverage?.improved;
+        let starts = self.met.starts();
+        if share <= covered {
+            return Some(starts);
+        }
+        let step = singleton_step(&self.met);
+        if !(share < 1.0) || step == 0.0 {
+            return None;
+        }
+        let further =
+            if step < 1.0 { logarithm((1.0 - share) / (1.0 - covered)) / logarithm_of_one_plus(-step) } else { 1.0 };
+        starts.checked_add(further.ceil() as u64)
     }
 
     /// The share of a basin that so many of the starts met; none where the survey has fewer starts, or none.

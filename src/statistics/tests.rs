@@ -174,6 +174,23 @@ fn prospects_agree_with_the_curve_and_the_coverage() {
 }
 
 #[test]
+fn starts_for_a_coverage() {
+    for (name, met, _) in tables() {
+        let figures = SurveyFigures::new(met, Confidence::NINETY_FIVE);
+        let covered = figures.coverage.unwrap().improved;
+        assert_eq!(figures.starts_for(covered), Some(figures.met.starts()), "{name}");
+        let share = 1.0 - 0.1 * (1.0 - covered);
+        let needed = figures.starts_for(share).unwrap();
+        assert!(figures.curve(needed).unwrap().coverage >= share - 1e-12, "{name}");
+        assert!(needed == figures.met.starts() || figures.curve(needed - 1).unwrap().coverage < share, "{name}");
+        assert_eq!(figures.starts_for(1.0).is_some(), covered == 1.0, "{name}");
+    }
+    assert_eq!(figures(&[5, 1]).starts_for(0.9), None, "one singleton and no doubleton: the curve is flat");
+    assert_eq!(figures(&[]).starts_for(0.5), None);
+    assert_eq!(figures(&[2, 1]).starts_for(f64::NAN), None);
+}
+
+#[test]
 fn shares_sum_to_one() {
     let counts = [61, 30, 5, 2, 1, 1];
     let figures = figures(&counts);

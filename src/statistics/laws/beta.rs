@@ -22,7 +22,7 @@ pub enum Tail {
 /// assert!((lower - 0.6875).abs() < 1e-14 && (upper - 0.3125).abs() < 1e-14);
 /// ```
 pub fn beta_tails(a: f64, b: f64, x: f64) -> (f64, f64) {
-    if !(a > 0.0 && b > 0.0 && 0.0 <= x && x <= 1.0) {
+    if !(a > 0.0 && b > 0.0 && (a + b).is_finite() && 0.0 <= x && x <= 1.0) {
         return (f64::NAN, f64::NAN);
     }
     if x == 0.0 {
@@ -87,7 +87,7 @@ fn fraction(a: f64, b: f64, x: f64, y: f64) -> f64 {
 /// assert!((beta_quantile(1.0, 10.0, Tail::Upper, 0.025) - 0.30849710781876083).abs() < 1e-14);
 /// ```
 pub fn beta_quantile(a: f64, b: f64, tail: Tail, probability: f64) -> f64 {
-    if !(a > 0.0 && b > 0.0 && 0.0 <= probability && probability <= 1.0) {
+    if !(a > 0.0 && b > 0.0 && (a + b).is_finite() && 0.0 <= probability && probability <= 1.0) {
         return f64::NAN;
     }
     // Positive where the quantile lies below x.
@@ -168,5 +168,6 @@ mod tests {
         assert_eq!(beta_quantile(2.0, 3.0, Tail::Upper, 0.0), 1.0);
         assert_eq!(beta_quantile(2.0, 3.0, Tail::Upper, 1.0), 0.0);
         assert!(beta_quantile(2.0, -3.0, Tail::Upper, 0.5).is_nan());
+        assert!(beta_tails(f64::INFINITY, 1.0, 0.5).0.is_nan());
     }
 }

@@ -10,7 +10,7 @@ use crate::numbers::functions::exponential;
 /// By the power series below the mean and the continued fraction above it (Abramowitz & Stegun 1964, 6.5.29 and
 /// 6.5.31; evaluation of Lentz 1976). NaN outside the range of the arguments.
 pub fn gamma_tails(shape: f64, x: f64) -> (f64, f64) {
-    if !(shape > 0.0 && x >= 0.0) {
+    if !(shape > 0.0 && shape.is_finite() && x >= 0.0) {
         return (f64::NAN, f64::NAN);
     }
     if x == 0.0 {

@@ -54,7 +54,8 @@ pub(super) fn deviance(x: f64, mean: f64, difference: f64) -> f64 {
         term *= square;
         odd += 2.0;
         let next = sum + term / odd;
-        if next == sum {
+        // A caller's NaN ends the series too.
+        if next == sum || !next.is_finite() {
             return sum;
         }
         sum = next;

@@ -6,7 +6,7 @@
 use rand::RngExt;
 
 use crate::base::random::{Purpose, stream};
-use crate::numbers::functions::real_power;
+use crate::numbers::functions::{exponential, logarithm, real_power};
 use crate::statistics::tests::tabulated;
 use crate::statistics::{Confidence, Frequencies, Interval, SurveyFigures, Unconverged};
 
@@ -40,6 +40,8 @@ struct Row {
     width: f64,
     esty: f64,
     chao: f64,
+    /// Of the accumulation curve at half the starts, all, and twice as many.
+    curve: [f64; 3],
 }
 
 fn simulate(shares: &[f64], starts: usize, landscape: u64) -> Row {
@@ -49,7 +51,10 @@ fn simulate(shares: &[f64], starts: usize, landscape: u64) -> Row {
         sum += share;
         cumulated.push(sum);
     }
-    let mut row = Row { covered: 0.0, coverage: 0.0, width: 0.0, esty: 0.0, chao: 0.0 };
+    let mut row = Row { covered: 0.0, coverage: 0.0, width: 0.0, esty: 0.0, chao: 0.0, curve: [0.0; 3] };
+    let sizes = [starts / 2, starts, 2 * starts];
+    let left_out = |share: f64, size: usize| exponential(size as f64 * logarithm((1.0 - share).max(1e-300)));
+    let truths = sizes.map(|size| shares.iter().map(|&share| 1.0 - left_out(share, size)).sum::<f64>());
     let mut counts = vec![0; shares.len()];
     for survey in 0..SURVEYS {
         let mut rng = stream(3, landscape, survey, Purpose::Survey);
@@ -69,9 +74,14 @@ fn simulate(shares: &[f64], starts: usize, landscape: u64) -> Row {
         row.coverage += holds(interval);
         row.width += interval.width();
         row.esty += holds(normal);
+        for ((holding, size), truth) in row.curve.iter_mut().zip(sizes).zip(truths) {
+            let Interval { low, high } = figures.curve(size as u64).unwrap().interval;
+            *holding += f64::from(low <= truth + 1e-9 && truth <= high + 1e-9);
+        }
         row.chao += f64::from(figures.richness.unwrap().interval.contains(shares.len() as f64));
     }
-    for sum in [&mut row.covered, &mut row.coverage, &mut row.width, &mut row.esty, &mut row.chao] {
+    let [half, all, twice] = &mut row.curve;
+    for sum in [half, all, twice, &mut row.covered, &mut row.coverage, &mut row.width, &mut row.esty, &mut row.chao] {
         *sum /= SURVEYS as f64;
     }
     row
@@ -90,7 +100,9 @@ fn intervals_for_coverage_hold_the_truth() {
         ("power", 2000, 1.0),
         ("power", 2000, 2.0),
     ];
-    let mut table = String::from("law            basins  starts  covered    holds   width  Esty's  Chao's\n");
+    let mut table = String::from(
+        "law            basins  starts  covered    holds   width  Esty's  Chao's  curve n/2       n      2n\n",
+    );
     let mut lowest: f64 = 1.0;
     for (landscape, (law, basins, parameter)) in landscapes.into_iter().enumerate() {
         let shares = shares(law, basins, parameter);
@@ -98,12 +110,15 @@ fn intervals_for_coverage_hold_the_truth() {
         for (size, starts) in [20, 50, 200, 1000].into_iter().enumerate() {
             let row = simulate(&shares, starts, (10 * landscape + size) as u64);
             table += &format!(
-                "{name:<14} {basins:>6} {starts:>7} {:>8.3} {:>5.1} % {:>7.4} {:>5.1} % {:>5.1} %\n",
+                "{name:<14} {basins:>6} {starts:>7} {:>8.3} {:>5.1} % {:>7.4} {:>5.1} % {:>5.1} % {:>8.1} % {:>5.1} % {:>5.1} %\n",
                 row.covered,
                 100.0 * row.coverage,
                 row.width,
                 100.0 * row.esty,
-                100.0 * row.chao
+                100.0 * row.chao,
+                100.0 * row.curve[0],
+                100.0 * row.curve[1],
+                100.0 * row.curve[2]
             );
             lowest = lowest.min(row.coverage);
         }

@@ -180,6 +180,14 @@ fn a_known_difference_is_found_with_the_stated_power() {
         };
         (0..COMPARISONS).filter(|&comparison| found(comparison)).count() as f64 / COMPARISONS as f64
     };
+    let holds = |comparison| {
+        let mut random = random(31, comparison);
+        let mut costs = |mean| hunt(25, mean, f64::MAX, &mut random).iter().map(|trial| trial.cost).collect::<Vec<_>>();
+        let (first, second) = (costs(1.0), costs(2.0));
+        effect_interval(&first, &second, Confidence::NINETY_FIVE).unwrap().contains(1.0 / 3.0)
+    };
+    let held = (0..COMPARISONS).filter(|&comparison| holds(comparison)).count() as f64 / COMPARISONS as f64;
+    assert!((held - 0.95).abs() < 0.03, "intervals of the effect hold it in {held}");
     let (few, needed) = (power(25), power(48));
     assert!(0.45 < few && few < 0.6, "25 trials each find a factor of two in {few}");
     assert!((needed - 0.8).abs() < 0.06, "48 trials each: {needed}");
