@@ -28,6 +28,7 @@ pub mod numbers;
 pub mod report;
 pub mod run;
 pub mod search;
+pub mod statistics;
 
 use std::fmt;
 use std::sync::Arc;
