@@ -19,7 +19,7 @@ use super::command::End;
 use super::display::Display;
 use super::screen::{warn, width};
 use super::source::{LARGEST_PROBLEM, read_file};
-use super::values::{evaluations, given, share, target, time};
+use super::values::{Until, evaluations, given, share, time, until};
 
 /// The budget of a hunt that was given none.
 const DEFAULT_TIME: Duration = Duration::from_secs(60);
@@ -40,16 +40,17 @@ pub(crate) struct Hunt {
     /// Ends after so much time: 90s, 15m, 8h, 1h30m
     #[arg(long = "for", value_name = "TIME", value_parser = time)]
     time: Option<Duration>,
-    /// Ends when met: target=-44.3268 (may be repeated; the first met ends the hunt)
-    #[arg(long, value_name = "CONDITION", value_parser = target, allow_hyphen_values = true)]
-    until: Vec<f64>,
+    /// Ends when met: target=-44.3268, coverage=0.99 (of the survey, with 95 % confidence), or quiet=1e7 (no lower value for
+    /// so many evaluations); may be repeated, and the first met ends the hunt
+    #[arg(long, value_name = "CONDITION", value_parser = until, allow_hyphen_values = true)]
+    until: Vec<Until>,
     /// The seed of all random numbers
     #[arg(long, default_value_t = 1)]
     seed: u64,
     /// Threads; the results do not depend on it [default: all processors]
     #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(1..=1024))]
     threads: Option<u16>,
-    /// Heuristics, with shares if you like: multistart,hop or hop:0.7,multistart:0.3
+    /// Heuristics: hop,evolve share by what they earn; hop:0.7,evolve:0.3 keep their shares [default: all four]
     #[arg(long, value_name = "NAMES", value_parser = |text: &str| Mix::read(text).map_err(|error| error.to_string()))]
     mix: Option<Mix>,
     /// The share of evaluations for the survey, independent uniform starts
@@ -88,10 +89,25 @@ impl Hunt {
         demand_promises(&problem)?;
         let given_points = self.given_points(&problem)?;
         let sign = if problem.landscape().maximise { -1.0 } else { 1.0 };
-        // Of several targets the easiest ends the hunt.
-        let target = self.until.iter().map(|target| sign * target).reduce(f64::max);
-        let allowed = match (self.time, self.evals, target) {
-            (None, None, None) => {
+        // Of several conditions of a kind the easiest ends the hunt.
+        let of_kind = |pick: fn(&Until) -> Option<f64>| self.until.iter().filter_map(pick);
+        let target = of_kind(|until| if let Until::Target(value) = until { Some(*value) } else { None })
+            .map(|value| sign * value)
+            .reduce(f64::max);
+        let coverage =
+            of_kind(|until| if let Until::Coverage(share) = until { Some(*share) } else { None }).reduce(f64::min);
+        let quiet =
+            self.until.iter().filter_map(|until| if let Until::Quiet(count) = until { Some(*count) } else { None });
+        let quiet = quiet.min();
+        if coverage.is_some() && self.survey == 0.0 {
+            return Err(Failure::new(
+                Blame::Input,
+                "--until coverage=… needs a survey, and --survey 0 makes none; leave --survey out, or give it a share"
+                    .to_string(),
+            ));
+        }
+        let allowed = match (self.time, self.evals, self.until.is_empty()) {
+            (None, None, true) => {
                 if !self.quiet {
                     warn("No budget given: hunting for 60 seconds (--for, --evals and --until set others).");
                 }
@@ -105,6 +121,8 @@ impl Hunt {
             survey: self.survey,
             max_evaluations: self.evals,
             target,
+            coverage,
+            quiet,
             given: given_points,
         };
         let threads = self.threads.map_or_else(processors, usize::from);
@@ -178,6 +196,9 @@ impl Hunt {
                 evaluations: settings.max_evaluations,
                 seconds: allowed.map(|time| time.as_secs()),
                 target: settings.target.map(|target| sign * target),
+                coverage: settings.coverage,
+                quiet: settings.quiet,
+                fixed_shares: settings.mix.is_fixed(),
                 given_points: settings.given.len(),
             },
             machine: RunMachine { threads, build: format!("{:?}", thalweg::kernel::Build::best()).to_lowercase() },
@@ -282,11 +303,17 @@ impl Watch<'_> {
             lowest: report.ledger.lowest_value().map(|value| self.sign * value),
             distinct: report.ledger.len() as u64,
             confirmed: report.ledger.n_confirmed() as u64,
+            shares: shares_by_name(report),
         };
         let line = serde_json::to_string(&entry).map_err(|error| Failure::new(Blame::Program, error.to_string()))?;
         self.journal.append(&line)?;
         if self.written.elapsed() >= WRITTEN {
-            let view = LedgerView { ledger: report.ledger, evaluations: report.evaluations, troubles: report.troubles };
+            let view = LedgerView {
+                ledger: report.ledger,
+                evaluations: report.evaluations,
+                survey_descents: report.descents[Heuristic::Survey.number()],
+                troubles: report.troubles,
+            };
             let file = self.problem.minima_file(&self.facts, &view);
             self.write_minima(&file)?;
             self.written = Instant::now();
@@ -303,13 +330,19 @@ impl Watch<'_> {
     }
 
     fn end(mut self, mut run_file: RunFile, outcome: &Outcome, json: bool) -> Result<End, Failure> {
-        let view =
-            LedgerView { ledger: &outcome.ledger, evaluations: outcome.evaluations, troubles: &outcome.troubles };
+        let view = LedgerView {
+            ledger: &outcome.ledger,
+            evaluations: outcome.evaluations,
+            survey_descents: outcome.descents[Heuristic::Survey.number()],
+            troubles: &outcome.troubles,
+        };
         let file = self.problem.minima_file(&self.facts, &view);
         let reason = match outcome.ending {
             _ if self.failure.is_some() => "failed",
             Ending::Evaluations => "evaluations",
             Ending::Target => "target",
+            Ending::Coverage => "coverage",
+            Ending::Quiet => "quiet",
             Ending::Observer if self.is_interrupted() => "interrupted",
             Ending::Observer => "time",
         };
@@ -331,6 +364,8 @@ impl Watch<'_> {
             let why = match reason {
                 "interrupted" => "Interrupted; ",
                 "target" => "Target met; ",
+                "coverage" => "Coverage reached; ",
+                "quiet" => "No lower value for long; ",
                 _ => "",
             };
             text.push_str(&format!("{why}the results are in {}\n", self.folder.path().display()));
@@ -344,6 +379,17 @@ impl Watch<'_> {
             }
         }
     }
+}
+
+/// Shares to four digits: they are for reading.
+fn shares_by_name(report: &RoundReport<'_>) -> BTreeMap<String, f64> {
+    let rounded = |share: f64| (share * 1e4).round() / 1e4;
+    let heuristics = Heuristic::ALL
+        .iter()
+        .map(|heuristic| (heuristic.name().to_string(), rounded(report.shares[heuristic.number()])));
+    let ways =
+        report.ways.iter().map(|&(heuristic, way, share)| (format!("{} {way}", heuristic.name()), rounded(share)));
+    heuristics.chain(ways).filter(|(_, share)| *share > 0.0).collect()
 }
 
 fn by_name(by_heuristic: &[u64]) -> BTreeMap<String, u64> {

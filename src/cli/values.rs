@@ -54,14 +54,28 @@ pub(crate) fn time(text: &str) -> Result<std::time::Duration, String> {
     if (1..=longest).contains(&seconds) { Ok(std::time::Duration::from_secs(seconds)) } else { Err(refused()) }
 }
 
-/// Reads `target=-44.3268`; the other conditions of ending are not there yet.
-pub(crate) fn target(text: &str) -> Result<f64, String> {
+/// What ends a hunt.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub(crate) enum Until {
+    /// A value this low, or this high for a maximum.
+    Target(f64),
+    /// A coverage of the survey, with 95 % confidence.
+    Coverage(f64),
+    /// So many evaluations without a lower value.
+    Quiet(u64),
+}
+
+/// Reads `target=-44.3268`, `coverage=0.99` or `quiet=1e7`.
+pub(crate) fn until(text: &str) -> Result<Until, String> {
     let (name, value) = text.split_once('=').unwrap_or((text, ""));
-    match (name.trim(), value.trim().parse::<f64>()) {
-        ("target", Ok(number)) if number.is_finite() => Ok(number),
+    let number = value.trim().parse::<f64>();
+    match (name.trim(), number) {
+        ("target", Ok(number)) if number.is_finite() => Ok(Until::Target(number)),
         ("target", _) => Err(format!("`{value}` is not a finite number; write target=-44.3268")),
-        (name @ ("coverage" | "quiet"), _) => Err(format!("`{name}` is not available yet; write target=-44.3268")),
-        (name, _) => Err(format!("there is no condition `{name}`; write target=-44.3268")),
+        ("coverage", Ok(number)) if 0.0 < number && number < 1.0 => Ok(Until::Coverage(number)),
+        ("coverage", _) => Err(format!("`{value}` is not a share between 0 and 1; write coverage=0.99")),
+        ("quiet", _) => evaluations(value).map(Until::Quiet),
+        (name, _) => Err(format!("there is no condition `{name}`; write target=-44.3268, coverage=0.99 or quiet=1e7")),
     }
 }
 
@@ -98,11 +112,16 @@ mod tests {
     }
 
     #[test]
-    fn targets_are_finite_and_other_conditions_are_told_apart() {
-        assert_eq!(target("target=-44.3268"), Ok(-44.3268));
-        assert!(target("target=low").unwrap_err().contains("finite"));
-        assert!(target("coverage=0.99").unwrap_err().contains("not available yet"));
-        assert!(target("luck=1").unwrap_err().contains("no condition `luck`"));
+    fn conditions_are_told_apart() {
+        assert_eq!(until("target=-44.3268"), Ok(Until::Target(-44.3268)));
+        assert_eq!(until("coverage=0.99"), Ok(Until::Coverage(0.99)));
+        assert_eq!(until("quiet=1e7"), Ok(Until::Quiet(10_000_000)));
+        assert!(until("target=low").unwrap_err().contains("finite"));
+        for text in ["coverage=1", "coverage=0", "coverage=nan", "coverage=99", "coverage"] {
+            assert!(until(text).unwrap_err().contains("between 0 and 1"), "{text}");
+        }
+        assert!(until("quiet=0").unwrap_err().contains("evaluations"));
+        assert!(until("luck=1").unwrap_err().contains("no condition `luck`"));
     }
 
     #[test]

@@ -6,9 +6,8 @@ use crate::landscape::{AxisRange, Landscape};
 use crate::ledger::{Entry, Ledger};
 use crate::search::{Heuristic, Troubles};
 
-use super::minima_file::{
-    Coverage, First, Format, MinimaFile, Minimum, NearTwin, Problem, SurveyCounts, Tolerances, Troubles as TroublesFile,
-};
+use super::coverage::coverage;
+use super::minima_file::{First, Format, MinimaFile, Minimum, NearTwin, Problem, Tolerances, Troubles as TroublesFile};
 use super::nested::{Nested, nest};
 
 /// What the file says beside the ledger.
@@ -26,6 +25,8 @@ pub struct LedgerView<'a> {
     pub ledger: &'a Ledger,
     /// Evaluations spent.
     pub evaluations: u64,
+    /// Descents of the survey that have ended.
+    pub survey_descents: u64,
     /// What went wrong.
     pub troubles: &'a Troubles,
 }
@@ -50,19 +51,12 @@ pub fn ledger_file(
         })
     });
     let tolerances = view.ledger.tolerances();
-    let survey = view.ledger.frequencies(Heuristic::Survey.number());
     MinimaFile {
         format: Format::default(),
         problem: facts.problem.clone(),
         seed: facts.seed,
         evaluations: view.evaluations,
-        coverage: Coverage {
-            survey: SurveyCounts {
-                descents: survey.iter().map(|(hits, entries)| hits * entries).sum(),
-                distinct: survey.values().sum(),
-                met_once: survey.get(&1).copied().unwrap_or(0),
-            },
-        },
+        coverage: coverage(view.ledger, view.survey_descents),
         near_twins: near_twins.collect(),
         minima: listed.iter().map(|entry| minimum(landscape, entry, &mut shown)).collect(),
         unconfirmed: (view.ledger.len() - listed.len()) as u64,
@@ -120,6 +114,7 @@ fn troubles(landscape: &Landscape, troubles: &Troubles) -> TroublesFile {
         starts_outside: troubles.starts_outside,
         out_of_budget: troubles.out_of_budget,
         stalled: troubles.stalled,
+        abandoned: troubles.abandoned,
         not_confirmed: troubles.not_confirmed,
         saddles: troubles.saddles,
         flat: troubles.flat,

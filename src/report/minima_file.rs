@@ -5,6 +5,7 @@ use std::fmt;
 
 use serde::{Deserialize, Serialize};
 
+use super::coverage::{self, Coverage};
 use super::nested::Nested;
 
 /// The name of the format in files.
@@ -26,7 +27,7 @@ pub struct MinimaFile {
     pub seed: u64,
     /// Evaluations spent.
     pub evaluations: u64,
-    /// What the survey says about the landscape.
+    /// What the survey tells of how much was not met.
     pub coverage: Coverage,
     /// The distinct minima, lowest first; of a `maximise` problem, highest first.
     pub minima: Vec<Minimum>,
@@ -69,24 +70,6 @@ pub struct Problem {
     pub givens: BTreeMap<String, f64>,
     /// The SHA-256 of its text, in hexadecimal.
     pub digest: String,
-}
-
-/// What is known of how much was not met.
-#[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
-pub struct Coverage {
-    /// Plain counts of the survey; estimates come with a later version.
-    pub survey: SurveyCounts,
-}
-
-/// Counts of the survey.
-#[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
-pub struct SurveyCounts {
-    /// Descents from uniform starts.
-    pub descents: u64,
-    /// Distinct minima that they ended in.
-    pub distinct: u64,
-    /// Those of them that the survey met exactly once.
-    pub met_once: u64,
 }
 
 /// One distinct minimum.
@@ -160,6 +143,9 @@ pub struct Troubles {
     pub out_of_budget: u64,
     /// Descents that stalled before the gradient vanished.
     pub stalled: u64,
+    /// Descents that their heuristic abandoned because no value that it could use was in sight; no trouble, but no minimum.
+    #[serde(default)]
+    pub abandoned: u64,
     /// Converged points that could not be confirmed.
     pub not_confirmed: u64,
     /// Converged points that proved to be saddles.
@@ -239,6 +225,7 @@ fn demand_finite(file: &MinimaFile) -> Result<(), FileError> {
         demand("residual", minimum.residual.is_finite())?;
     }
     let twins = |t: &NearTwin| t.value_difference.is_finite() && t.deviation.is_finite();
+    demand("coverage", coverage::is_finite(&file.coverage))?;
     demand("near_twins", file.near_twins.iter().all(twins))?;
     demand("tolerances", file.tolerances.value.is_finite() && file.tolerances.place.is_finite())?;
     demand("givens", file.problem.givens.values().all(|x| x.is_finite()))?;
@@ -249,6 +236,34 @@ fn demand_finite(file: &MinimaFile) -> Result<(), FileError> {
 pub(super) mod tests {
     use super::super::nested::nest;
     use super::*;
+
+    /// The figures of 40 descents, 39 of which met the lower of two minima: 0.975 by Turing, (n - w - 1)(n + w)/(n (n - 1))
+    /// = 37 * 42/(40 * 39) by Boender and Rinnooy Kan.
+    fn sample_coverage() -> Coverage {
+        let between = |low, high| coverage::Between { low, high };
+        let share = |rank, descents, share| coverage::BasinShare {
+            rank: Some(rank),
+            descents,
+            share,
+            interval: between(0.0, 1.0),
+        };
+        Coverage {
+            survey: coverage::SurveyCounts { descents: 40, failed: 1, distinct: 2, met_once: 1, met_twice: 0 },
+            confidence: 0.95,
+            covered: Some(coverage::Covered { share: 0.975, turing: 0.975, interval: between(0.86, 0.999) }),
+            basins: Some(coverage::Basins { at_least: 2.0, interval: between(2.0, 4.5) }),
+            expected: Some(coverage::Expected {
+                basins: Some(78.0 / 36.0),
+                covered: Some(37.0 * 42.0 / 1560.0),
+                all_met: None,
+            }),
+            next: vec![coverage::Next { starts: 1, chance: 0.025, interval: between(0.001, 0.14), expected: 0.025 }],
+            starts_for_99: None,
+            lowest: Some(share(1, 39, 0.975)),
+            shares: vec![share(1, 39, 0.975), share(2, 1, 0.025)],
+            curve: vec![coverage::CurvePoint { starts: 40, basins: 2.0, interval: between(1.0, 3.0) }],
+        }
+    }
 
     /// An invented file with two minima.
     pub(in super::super) fn sample() -> MinimaFile {
@@ -274,7 +289,7 @@ pub(super) mod tests {
             },
             seed: 7,
             evaluations: 12_000,
-            coverage: Coverage { survey: SurveyCounts { descents: 40, distinct: 2, met_once: 1 } },
+            coverage: sample_coverage(),
             minima: vec![minimum(-1.0, 1.0 / 3.0, &[("hop", 5), ("survey", 39)]), minimum(-0.5, 2.0, &[("survey", 1)])],
             unconfirmed: 0,
             near_twins: vec![NearTwin { first: 1, second: 2, value_difference: 0.5, deviation: 0.25 }],
@@ -297,7 +312,7 @@ pub(super) mod tests {
             pub(super) problem: Problem,
             pub(super) seed: u64,
             pub(super) evaluations: u64,
-            pub(super) coverage: BTreeMap<String, Survey>,
+            pub(super) coverage: Coverage,
             pub(super) minima: Vec<Minimum>,
             pub(super) unconfirmed: u64,
             pub(super) near_twins: Vec<BTreeMap<String, f64>>,
@@ -324,10 +339,64 @@ pub(super) mod tests {
 
         #[derive(Deserialize)]
         #[serde(deny_unknown_fields)]
-        pub(super) struct Survey {
+        pub(super) struct Coverage {
+            pub(super) survey: BTreeMap<String, u64>,
+            pub(super) confidence: f64,
+            pub(super) covered: Covered,
+            pub(super) basins: Basins,
+            pub(super) expected: BTreeMap<String, f64>,
+            pub(super) next: Vec<Next>,
+            pub(super) lowest: Share,
+            pub(super) shares: Vec<Share>,
+            pub(super) curve: Vec<Point>,
+        }
+
+        #[derive(Deserialize)]
+        #[serde(deny_unknown_fields)]
+        pub(super) struct Between {
+            pub(super) low: f64,
+            pub(super) high: f64,
+        }
+
+        #[derive(Deserialize)]
+        #[serde(deny_unknown_fields)]
+        pub(super) struct Covered {
+            pub(super) share: f64,
+            pub(super) turing: f64,
+            pub(super) interval: Between,
+        }
+
+        #[derive(Deserialize)]
+        #[serde(deny_unknown_fields)]
+        pub(super) struct Basins {
+            pub(super) at_least: f64,
+            pub(super) interval: Between,
+        }
+
+        #[derive(Deserialize)]
+        #[serde(deny_unknown_fields)]
+        pub(super) struct Next {
+            pub(super) starts: u64,
+            pub(super) chance: f64,
+            pub(super) interval: Between,
+            pub(super) expected: f64,
+        }
+
+        #[derive(Deserialize)]
+        #[serde(deny_unknown_fields)]
+        pub(super) struct Share {
+            pub(super) rank: usize,
             pub(super) descents: u64,
-            pub(super) distinct: u64,
-            pub(super) met_once: u64,
+            pub(super) share: f64,
+            pub(super) interval: Between,
+        }
+
+        #[derive(Deserialize)]
+        #[serde(deny_unknown_fields)]
+        pub(super) struct Point {
+            pub(super) starts: u64,
+            pub(super) basins: f64,
+            pub(super) interval: Between,
         }
 
         #[derive(Deserialize)]
@@ -360,8 +429,20 @@ pub(super) mod tests {
         assert_eq!((file.problem.name.as_str(), file.problem.sense.as_str()), ("pore.land", "minimise"));
         assert!(file.problem.title.contains("pore") && file.problem.digest.len() == 64);
         assert_eq!((file.problem.givens["n"], file.seed, file.evaluations), (2.0, 7, 12_000));
-        let survey = &file.coverage["survey"];
-        assert_eq!((survey.descents, survey.distinct, survey.met_once), (40, 2, 1));
+        let coverage = &file.coverage;
+        let survey = |name: &str| coverage.survey[name];
+        assert_eq!((survey("descents"), survey("failed"), survey("distinct"), survey("met_once")), (40, 1, 2, 1));
+        assert_eq!((survey("met_twice"), coverage.survey.len(), coverage.confidence), (0, 5, 0.95));
+        let covered = &coverage.covered;
+        assert_eq!((covered.share, covered.turing, covered.interval.low), (0.975, 0.975, 0.86));
+        assert_eq!((coverage.basins.at_least, coverage.basins.interval.high), (2.0, 4.5));
+        assert!(coverage.expected.contains_key("basins") && coverage.expected.contains_key("covered"));
+        let next = &coverage.next[0];
+        assert_eq!((next.starts, next.chance, next.expected, next.interval.high), (1, 0.025, 0.025, 0.14));
+        assert_eq!((coverage.lowest.rank, coverage.lowest.descents, coverage.lowest.share), (1, 39, 0.975));
+        assert_eq!((coverage.shares[1].rank, coverage.shares[1].interval.low), (2, 0.0));
+        let point = &coverage.curve[0];
+        assert_eq!((point.starts, point.basins, point.interval.low), (40, 2.0, 1.0));
         let lowest = &file.minima[0];
         assert_eq!((lowest.value, lowest.kind.as_str(), lowest.residual), (-1.0, "interior", 3e-15));
         assert_eq!((lowest.stiffness.len(), lowest.hits["hop"], lowest.first.evaluation), (3, 5, 1204));

@@ -2,8 +2,9 @@
 
 use std::collections::BTreeMap;
 
+use super::coverage_text::coverage_text;
 use super::minima_file::{MinimaFile, Minimum, Troubles};
-use super::table::{Align, Table, plain};
+use super::table::{Align, Table, counted, grouped, plain};
 
 /// What `minima` shows: at most `most` minima, in lines of at most `width` characters.
 pub fn minima_text(file: &MinimaFile, most: usize, width: usize) -> String {
@@ -35,7 +36,7 @@ pub fn minima_text(file: &MinimaFile, most: usize, width: usize) -> String {
         out.push_str(&format!("  {} more were met and not confirmed\n", grouped(file.unconfirmed)));
     }
     out.push('\n');
-    out.push_str(&survey_text(file));
+    out.push_str(&coverage_text(&file.coverage, word));
     out.push_str(&twins_text(file));
     out.push_str(&troubles_text(&file.troubles, file.evaluations));
     out.push_str(&format!(
@@ -77,19 +78,6 @@ fn hits(hits: &BTreeMap<String, u64>) -> String {
     parts.join(", ")
 }
 
-fn survey_text(file: &MinimaFile) -> String {
-    let survey = &file.coverage.survey;
-    if survey.descents == 0 {
-        return "Survey: none, so nothing can be said about what was not met.\n".to_string();
-    }
-    format!(
-        "Survey: {} from uniform starts met {}, {} of them once.\n  Basins too small for the survey are what it cannot see.\n",
-        counted(survey.descents, "descent", "descents"),
-        counted(survey.distinct, "distinct minimum", "distinct minima"),
-        grouped(survey.met_once)
-    )
-}
-
 fn twins_text(file: &MinimaFile) -> String {
     if file.near_twins.is_empty() {
         return String::new();
@@ -121,29 +109,13 @@ fn troubles_text(troubles: &Troubles, evaluations: u64) -> String {
         (troubles.starts_outside, "began outside the landscape"),
         (troubles.out_of_budget, "ran out of their evaluations"),
         (troubles.stalled, "stalled before the gradient vanished"),
+        (troubles.abandoned, "were abandoned, with nothing useful in sight"),
         (troubles.not_confirmed, "ended in points that could not be confirmed"),
         (troubles.flat, "ended in flat valleys"),
     ] {
         if count > 0 {
             out.push_str(&format!("Descents that {what}: {}\n", grouped(count)));
         }
-    }
-    out
-}
-
-fn counted(count: u64, one: &str, many: &str) -> String {
-    format!("{} {}", grouped(count), if count == 1 { one } else { many })
-}
-
-/// A count in groups of three: `1 234 567`.
-fn grouped(count: u64) -> String {
-    let digits = count.to_string();
-    let mut out = String::new();
-    for (place, digit) in digits.chars().enumerate() {
-        if place > 0 && (digits.len() - place).is_multiple_of(3) {
-            out.push(' ');
-        }
-        out.push(digit);
     }
     out
 }
@@ -165,8 +137,14 @@ lowest value met: -1
      1   -1.000000000       0.000e0   interior   2.500e0   1 204 by hop   hop 5, survey 39
   … and 1 more
 
-Survey: 40 descents from uniform starts met 2 distinct minima, 1 of them once.
-  Basins too small for the survey are what it cannot see.
+Survey: 40 descents from independent uniform starts met 2 distinct minima, 1 of them once.
+  1 more led to no minimum; the figures speak of the rest of the start region.
+  Covered: 97.5 % of the start region drains to minima that the survey met (86.0 % to 99.900 %; assumes nothing of the basins' sizes).
+  A further start meets a new one with chance 0.025.
+  Basins: at least about 2.0 (2.0 to 4.5; a lower bound, far too low where very many are tiny).
+  If all basin sizes were equally likely beforehand (Boender and Rinnooy Kan): 2.2 basins, 99.615 % covered.
+  The basin of the lowest: 97.5 % of the start region (0 % to 100 %; exact for a basin named in advance).
+  Basins too small for the survey are what it cannot see: no figure here proves a value the lowest there is.
 Near twins, judged distinct but within ten times a tolerance:
   1 and 2: values differ by 5.00e-1, places by 2.50e-1
 Outside the landscape (no finite value): 0.10 % of evaluations

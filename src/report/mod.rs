@@ -5,6 +5,8 @@
 //! but differences to the lowest), files, clocks, and the word "global", which only a certificate could say.
 
 mod check;
+mod coverage;
+mod coverage_text;
 mod ledger_file;
 mod minima_csv;
 mod minima_file;
@@ -14,11 +16,14 @@ mod run_file;
 mod table;
 
 pub use check::{BrokenFacts, CheckFacts, FamilyFacts, GradientFacts, check_json, check_text};
+pub use coverage::{
+    BasinShare, Basins, Between, Coverage, Covered, CurvePoint, Expected, Next, SurveyCounts, coverage,
+};
 pub use ledger_file::{HuntFacts, LedgerView, ledger_file};
 pub use minima_csv::minima_csv;
 pub use minima_file::{
-    Coverage, FileError, First, Format, MinimaFile, Minimum, NearTwin, Problem, SurveyCounts, Tolerances, Troubles,
-    read_minima_file, write_minima_file,
+    FileError, First, Format, MinimaFile, Minimum, NearTwin, Problem, Tolerances, Troubles, read_minima_file,
+    write_minima_file,
 };
 pub use minima_text::minima_text;
 pub use nested::{Nested, nest};

@@ -31,7 +31,7 @@ pub struct RunFile {
 pub struct RunSettings {
     /// The seed.
     pub seed: u64,
-    /// The heuristics with their shares of what the survey leaves.
+    /// The heuristics with their shares, at the beginning, of what the survey leaves.
     pub mix: BTreeMap<String, f64>,
     /// The share of evaluations that goes to the survey.
     pub survey: f64,
@@ -44,6 +44,15 @@ pub struct RunSettings {
     /// The value that ends it, of the objective as written.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub target: Option<f64>,
+    /// The coverage that ends it.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub coverage: Option<f64>,
+    /// The evaluations without a lower value that end it.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub quiet: Option<u64>,
+    /// Whether the shares of the mix stay as they are.
+    #[serde(default)]
+    pub fixed_shares: bool,
     /// Points that the user gave.
     pub given_points: usize,
 }
@@ -60,7 +69,7 @@ pub struct RunMachine {
 /// The end of a run.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
 pub struct RunEnd {
-    /// `evaluations`, `target`, `time`, `interrupted` or `failed`.
+    /// `evaluations`, `target`, `coverage`, `quiet`, `time`, `interrupted` or `failed`.
     pub reason: String,
     /// Rounds merged.
     pub rounds: u64,
@@ -97,4 +106,8 @@ pub struct JournalEntry {
     pub distinct: u64,
     /// Those of them that are confirmed.
     pub confirmed: u64,
+    /// The share of the next evaluations that each heuristic gets; `hop walk` and the like are the ways inside one, as parts
+    /// of its turns.
+    #[serde(default)]
+    pub shares: BTreeMap<String, f64>,
 }

@@ -60,6 +60,24 @@ impl Table {
     }
 }
 
+/// A count with its noun: `1 descent`, `2 descents`.
+pub(super) fn counted(count: u64, one: &str, many: &str) -> String {
+    format!("{} {}", grouped(count), if count == 1 { one } else { many })
+}
+
+/// A count in groups of three: `1 234 567`.
+pub(super) fn grouped(count: u64) -> String {
+    let digits = count.to_string();
+    let mut out = String::new();
+    for (place, digit) in digits.chars().enumerate() {
+        if place > 0 && (digits.len() - place).is_multiple_of(3) {
+            out.push(' ');
+        }
+        out.push(digit);
+    }
+    out
+}
+
 /// Text that comes from the problem, fit for a terminal: control characters are written out.
 pub fn plain(text: &str) -> String {
     text.chars().map(|c| if c.is_control() { c.escape_default().to_string() } else { c.to_string() }).collect()

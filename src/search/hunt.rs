@@ -167,6 +167,9 @@ fn report(round: u64, state: &Hunt) -> RoundReport<'_> {
         evaluations: state.evaluations(),
         by_heuristic: state.schedule().spent(),
         confirming: state.confirming(),
+        descents: state.schedule().descents(),
+        shares: state.schedule().shares(),
+        ways: state.ways(),
         ledger: state.ledger(),
         troubles: state.troubles(),
     }

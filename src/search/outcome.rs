@@ -36,6 +36,12 @@ pub struct RoundReport<'a> {
     pub by_heuristic: [u64; Heuristic::ALL.len()],
     /// Evaluations so far spent on confirming minima.
     pub confirming: u64,
+    /// Descents that have ended, by heuristic.
+    pub descents: [u64; Heuristic::ALL.len()],
+    /// The shares of the next evaluations, in the order of [`Heuristic::ALL`].
+    pub shares: [f64; Heuristic::ALL.len()],
+    /// The ways inside heuristics, with their shares of the heuristic's turns.
+    pub ways: Vec<(Heuristic, &'static str, f64)>,
     /// What was met so far.
     pub ledger: &'a Ledger,
     /// What went wrong so far.
@@ -84,6 +90,10 @@ pub enum Ending {
     Evaluations,
     /// The target was met.
     Target,
+    /// The survey's coverage was reached.
+    Coverage,
+    /// No lower value was met for long.
+    Quiet,
     /// The observer said so.
     Observer,
 }

@@ -177,12 +177,26 @@ pub struct Settings {
     pub max_evaluations: Option<u64>,
     /// The hunt ends after the round in which a value at or below this is met (of the minimised objective).
     pub target: Option<f64>,
+    /// The hunt ends after the round in which the survey's coverage reaches this share with 95 % confidence: when the lower
+    /// end of its interval does.
+    pub coverage: Option<f64>,
+    /// The hunt ends after the round in which so many evaluations have passed without a lower value.
+    pub quiet: Option<u64>,
     /// Points to descend from first.
     pub given: Vec<Vec<f64>>,
 }
 
 impl Default for Settings {
     fn default() -> Self {
-        Settings { seed: 1, mix: Mix::default(), survey: 0.2, max_evaluations: None, target: None, given: Vec::new() }
+        Settings {
+            seed: 1,
+            mix: Mix::default(),
+            survey: 0.2,
+            max_evaluations: None,
+            target: None,
+            coverage: None,
+            quiet: None,
+            given: Vec::new(),
+        }
     }
 }

@@ -8,6 +8,7 @@ use std::sync::Arc;
 
 use crate::base::random::{Purpose, stream};
 use crate::ledger::{EntryId, Identity, Ledger, Meeting};
+use crate::statistics::{Confidence, Frequencies, Unconverged, coverage};
 
 use super::outcome::{Ending, Troubles};
 use super::portfolio::Portfolio;
@@ -30,6 +31,9 @@ const WORTH_LOWEST: f64 = 5.0;
 /// Lower minima that are counted for that.
 const RANKED: usize = 200;
 
+/// The survey's coverage is worked out again when the survey has grown by one part in so many.
+const COVERAGE_GROWTH: u64 = 20;
+
 /// The share of evaluations that confirmations may take while the hunt goes on; the rest waits for the closing.
 const CONFIRMING_SHARE: f64 = 0.05;
 
@@ -46,6 +50,10 @@ pub struct Hunt {
     asked_to_confirm: BTreeSet<EntryId>,
     given_drawn: usize,
     rounds_merged: u64,
+    /// The evaluations after which the lowest value so far was met.
+    last_lower: u64,
+    /// Descents of the survey before which its coverage is not worked out again.
+    next_coverage: u64,
 }
 
 impl Hunt {
@@ -60,6 +68,8 @@ impl Hunt {
             asked_to_confirm: BTreeSet::new(),
             given_drawn: 0,
             rounds_merged: 0,
+            last_lower: 0,
+            next_coverage: 1,
             settings,
             structure,
         }
@@ -90,8 +100,28 @@ impl Hunt {
         if self.settings.target.is_some_and(reached) {
             return Some(Ending::Target);
         }
-        let spent = |most: u64| self.evaluations() >= most;
-        self.settings.max_evaluations.is_some_and(spent).then_some(Ending::Evaluations)
+        if self.settings.coverage.is_some_and(|share| self.survey_covers(share)) {
+            return Some(Ending::Coverage);
+        }
+        let evaluations = self.evaluations();
+        if self.settings.quiet.is_some_and(|quiet| evaluations >= self.last_lower.saturating_add(quiet)) {
+            return Some(Ending::Quiet);
+        }
+        self.settings.max_evaluations.is_some_and(|most| evaluations >= most).then_some(Ending::Evaluations)
+    }
+
+    /// Whether the lower end of the survey's coverage has reached a share. Worked out anew only when the survey has grown by a
+    /// part, since it takes a walk through the ledger.
+    fn survey_covers(&mut self, share: f64) -> bool {
+        let descents = self.schedule().descents()[Heuristic::Survey.number()];
+        if descents < self.next_coverage {
+            return false;
+        }
+        self.next_coverage = descents + (descents / COVERAGE_GROWTH).max(1);
+        let pairs: Vec<(u64, u64)> = self.ledger.frequencies(Heuristic::Survey.number()).into_iter().collect();
+        let met = Frequencies::from_pairs(&pairs, 0, Unconverged::SetAside);
+        let covered = met.ok().and_then(|met| coverage(&met, Confidence::NINETY_FIVE));
+        covered.is_some_and(|covered| covered.interval.low >= share)
     }
 
     /// Takes in the results of the closing.
@@ -112,6 +142,11 @@ impl Hunt {
                 Finding::Met { heuristic, mark, candidate } => {
                     let evaluation = self.evaluations() + result.evaluations;
                     let meeting = Meeting { heuristic: heuristic.number(), round, task: number, evaluation };
+                    let before = self.ledger.lowest_entry().and_then(|entry| self.scene(round).place(entry));
+                    let lower = before.is_none_or(|before| before.is_above(candidate.value));
+                    if lower {
+                        self.last_lower = evaluation;
+                    }
                     let met = self.ledger.meet(candidate, meeting);
                     if met.new {
                         self.met.push(met.entry);
@@ -153,6 +188,10 @@ impl Hunt {
         let scene = Scene { structure: &self.structure, ledger: &self.ledger, met: &self.met, round };
         let place: Option<Place> = entry.and_then(|entry| scene.place(entry));
         self.portfolio.arrive(heuristic, &scene, Arrival { mark, place, evaluations, worth }, &mut rng);
+    }
+
+    fn scene(&self, round: u64) -> Scene<'_> {
+        Scene { structure: &self.structure, ledger: &self.ledger, met: &self.met, round }
     }
 
     /// What a new entry is worth to the heuristic that met it.

@@ -143,6 +143,21 @@ impl Annealing {
         } else {
             rise <= 0.0 || self.rng.random::<f64>() < functions::exponential(-rise / self.temperature)
         };
+        if self.temperature.is_finite() {
+            self.adapt(accepted);
+        }
+        if accepted {
+            self.value = Some(value);
+            std::mem::swap(&mut self.at, &mut self.trial);
+        }
+        if self.sampling == 0 {
+            self.count(accepted);
+        }
+    }
+
+    /// The step of the unit in hand follows its share of accepted trials; not while the first temperature is measured, since
+    /// only steps down are accepted then.
+    fn adapt(&mut self, accepted: bool) {
         let unit = &mut self.units[self.unit];
         unit.tried += 1;
         unit.accepted += u32::from(accepted);
@@ -157,13 +172,6 @@ impl Annealing {
             };
             unit.step = (unit.step * factor).clamp(LEAST_STEP, 0.5);
             (unit.tried, unit.accepted) = (0, 0);
-        }
-        if accepted {
-            self.value = Some(value);
-            std::mem::swap(&mut self.at, &mut self.trial);
-        }
-        if self.sampling == 0 {
-            self.count(accepted);
         }
     }
 
