@@ -76,7 +76,8 @@ pub(super) fn singleton_step(met: &Frequencies) -> f64 {
 /// `1 - (a/2)^(1/n)`, about 3.7/n at 95 %.
 ///
 /// This form was chosen by simulation against the intervals of Esty (1983), of the logit and of scaled binomial and
-/// Poisson laws; the developers' guide tabulates how often it holds the truth.
+/// Poisson laws; the developers' guide tabulates how often it holds the truth. To stop a survey at a coverage, wait for the
+/// lower end, not for the estimate: looking again and again finds the estimate there by luck.
 pub fn coverage_interval(met: &Frequencies, confidence: Confidence) -> Interval {
     let n = met.starts() as f64;
     let (f1, f2) = (met.met_exactly(1) as f64, met.met_exactly(2) as f64);

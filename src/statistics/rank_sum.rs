@@ -52,15 +52,9 @@ pub struct RankSum {
 /// # Ok::<(), thalweg::statistics::StatisticsError>(())
 /// ```
 pub fn rank_sum(first: &[f64], second: &[f64]) -> Result<RankSum, StatisticsError> {
-    if first.is_empty() || second.is_empty() {
-        return Err(StatisticsError::Empty);
-    }
-    let ranks = midranks(&[first, second].concat())?;
+    let (ranks, u) = rank(first, second)?;
     let (m, n) = (first.len(), second.len());
-    let pairs = (m * n) as f64;
-    let sum: f64 = ranks[..m].iter().sum();
-    let u = sum - 0.5 * (m * (m + 1)) as f64;
-    let effect = u / pairs;
+    let effect = u / (m * n) as f64;
     if (m + n) * m.min(n) <= EXACT_LIMIT {
         let (sample, of) = if m <= n { (&ranks[..m], m) } else { (&ranks[m..], n) };
         let chance = exact_chance(&ranks, of, sample.iter().sum());
@@ -104,8 +98,8 @@ pub fn rank_sum_of_trials(first: &[Trial], second: &[Trial]) -> Result<RankSum, 
 /// # Ok::<(), thalweg::statistics::StatisticsError>(())
 /// ```
 pub fn effect_interval(first: &[f64], second: &[f64], confidence: Confidence) -> Result<Interval, StatisticsError> {
-    let effect = rank_sum(first, second)?.effect;
     let (m, n) = (first.len() as f64, second.len() as f64);
+    let effect = rank(first, second)?.1 / (m * n);
     let others = 0.5 * (m + n) - 1.0;
     let square = confidence.deviations() * confidence.deviations();
     let refuted = |t: f64| {
@@ -125,6 +119,17 @@ pub fn effect_interval(first: &[f64], second: &[f64], confidence: Confidence) ->
         kept
     };
     Ok(Interval { low: end(0.0), high: end(1.0) })
+}
+
+/// The ranks of both samples together, and the pairs in which the first sample's value is higher.
+pub(super) fn rank(first: &[f64], second: &[f64]) -> Result<(Vec<f64>, f64), StatisticsError> {
+    if first.is_empty() || second.is_empty() {
+        return Err(StatisticsError::Empty);
+    }
+    let ranks = midranks(&[first, second].concat())?;
+    let m = first.len();
+    let u = ranks[..m].iter().sum::<f64>() - 0.5 * (m * (m + 1)) as f64;
+    Ok((ranks, u))
 }
 
 /// The chance that the ranks of `size` items dealt from all have a sum at least as far from its mean as the observed one.

@@ -98,7 +98,8 @@ impl SurveyFigures {
             } else if covered <= 0.0 {
                 1.0
             } else {
-                -exponential_less_one(further as f64 * logarithm_of_one_plus(covered - 1.0)) + 0.0
+                // A sum with 0, since no chance is -0.
+                0.0 - exponential_less_one(further as f64 * logarithm_of_one_plus(covered - 1.0))
             }
         };
         let interval = Interval { low: chance(coverage.interval.high), high: chance(coverage.interval.low) };

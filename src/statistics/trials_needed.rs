@@ -2,8 +2,8 @@
 
 use super::interval::{Confidence, StatisticsError};
 use super::laws::normal_quantile;
-use super::rank_sum::rank_sum;
-use super::ranks::{midranks, tie_sum};
+use super::rank_sum::rank;
+use super::ranks::tie_sum;
 
 /// About how many trials *each* of two samples would need in all for the rank-sum test at this confidence to find the
 /// difference with this chance (`power`), were the tendency as large as it looks; none where it looks like none.
@@ -32,11 +32,11 @@ pub fn trials_needed(
     if !(0.0 < power && power < 1.0) {
         return Err(StatisticsError::Share(power));
     }
-    let away = rank_sum(first, second)?.effect - 0.5;
+    let (ranks, u) = rank(first, second)?;
+    let away = u / (first.len() * second.len()) as f64 - 0.5;
     if away == 0.0 {
         return Ok(None);
     }
-    let ranks = midranks(&[first, second].concat())?;
     let all = ranks.len() as f64;
     let untied = 1.0 - tie_sum(&ranks) / (all * (all * all - 1.0));
     let deviations = (confidence.deviations() + normal_quantile(power)).max(0.0);

@@ -8,7 +8,7 @@ use rand::RngExt;
 use crate::base::random::{Purpose, stream};
 use crate::numbers::functions::{exponential, logarithm, real_power};
 use crate::statistics::tests::tabulated;
-use crate::statistics::{Confidence, Frequencies, Interval, SurveyFigures, Unconverged};
+use crate::statistics::{Confidence, Frequencies, Interval, SurveyFigures, Unconverged, coverage};
 
 const SURVEYS: u64 = 1000;
 
@@ -125,4 +125,46 @@ fn intervals_for_coverage_hold_the_truth() {
     }
     assert!(lowest >= 0.93, "a landscape whose intervals hold the truth in {lowest} of surveys:\n{table}");
     tabulated("coverage_calibration.txt", &table);
+}
+
+/// A survey that goes on until its interval lies above a coverage looks many times, which no interval allows for. Checked
+/// every 20 starts, its lower end still keeps the promise, where the estimate alone keeps it about every other time.
+#[test]
+fn surveys_that_stop_at_the_lower_end_have_the_coverage() {
+    for (landscape, (law, basins, parameter)) in
+        [("equal", 30, 0.0), ("geometric", 60, 0.9), ("power", 2000, 2.0)].into_iter().enumerate()
+    {
+        let shares = shares(law, basins, parameter);
+        let (mut by_end, mut by_estimate, mut ends) = (0, 0, 0);
+        for survey in 0..300 {
+            let mut rng = stream(4, landscape as u64, survey, Purpose::Survey);
+            let mut counts = vec![0; shares.len()];
+            let mut estimated = false;
+            loop {
+                for _ in 0..20 {
+                    let mut at = rng.random::<f64>();
+                    let basin = shares.iter().position(|share| {
+                        at -= share;
+                        at < 0.0
+                    });
+                    counts[basin.unwrap_or(0)] += 1;
+                }
+                let met = Frequencies::from_counts(&counts, 0, Unconverged::SetAside).unwrap();
+                let coverage = coverage(&met, Confidence::NINETY_FIVE).unwrap();
+                let pairs = shares.iter().zip(&counts);
+                let truth: f64 = pairs.filter(|&(_, &count)| count > 0).map(|(share, _)| share).sum();
+                if coverage.turing >= 0.9 && !estimated {
+                    estimated = true;
+                    by_estimate += u32::from(truth >= 0.9);
+                }
+                if coverage.interval.low >= 0.9 {
+                    ends += met.starts();
+                    by_end += u32::from(truth >= 0.9);
+                    break;
+                }
+            }
+        }
+        assert!(by_end >= 285, "{law}: {by_end} of 300 in {ends} starts");
+        assert!(by_estimate < 255, "{law}: {by_estimate} of 300 by the estimate");
+    }
 }

@@ -1,5 +1,6 @@
 //! Comparisons of trials: expected costs against the reference, false alarms and power by simulation.
 
+use proptest::prelude::*;
 use rand::RngExt;
 use rand_chacha::ChaCha8Rng;
 
@@ -196,4 +197,53 @@ fn a_known_difference_is_found_with_the_stated_power() {
         |mean: f64| -> Vec<f64> { (0..300).map(|i| -mean * logarithm(1.0 - (f64::from(i) + 0.5) / 300.0)).collect() };
     let needed = trials_needed(&sample(1.0), &sample(2.0), Confidence::NINETY_FIVE, 0.8).unwrap().unwrap();
     assert!((46..=50).contains(&needed), "{needed}");
+}
+
+fn any_trials() -> impl Strategy<Value = Vec<Trial>> {
+    let cost = prop_oneof![(0_u32..6).prop_map(f64::from), 0.0..1e9, Just(1e300)];
+    prop::collection::vec((cost, any::<bool>()).prop_map(|(cost, hit)| Trial { cost, hit }), 1..40)
+}
+
+proptest! {
+    #[test]
+    fn any_trials_give_sound_figures(first in any_trials(), second in any_trials()) {
+        let mut backwards = first.clone();
+        backwards.reverse();
+        let test = rank_sum_of_trials(&first, &second).unwrap();
+        prop_assert_eq!(test, rank_sum_of_trials(&backwards, &second).unwrap());
+        let swapped = rank_sum_of_trials(&second, &first).unwrap();
+        prop_assert!((test.chance - swapped.chance).abs() < 1e-10 && 0.0 < test.chance && test.chance <= 1.0);
+        prop_assert!((test.effect + swapped.effect - 1.0).abs() < 1e-14);
+
+        let log = log_rank(&first, &second).unwrap();
+        prop_assert!(0.0 <= log.chance && log.chance <= 1.0 && log.variance >= 0.0);
+        prop_assert!((log.chance - log_rank(&second, &first).unwrap().chance).abs() < 1e-8);
+        prop_assert_eq!(log_rank(&first, &first).unwrap().chance, 1.0);
+
+        let steps = hit_distribution(&first, Confidence::NINETY_FIVE).unwrap();
+        prop_assert!(steps.is_sorted_by(|a, b| a.cost < b.cost && a.share < b.share));
+        for step in &steps {
+            prop_assert!(0.0 < step.share && step.share <= 1.0);
+            prop_assert!(0.0 <= step.interval.low && step.interval.contains(step.share) && step.interval.high <= 1.0);
+        }
+        let expected = expected_cost(&first, Confidence::NINETY_FIVE, 50, &mut random(6, 0)).unwrap();
+        prop_assert!(expected.interval.low >= 0.0 && expected.interval.contains(expected.cost), "{expected:?}");
+    }
+
+    #[test]
+    fn any_table_of_values_gives_sound_figures(
+        rows in prop::collection::vec(prop::collection::vec(prop_oneof![(0_u32..4).prop_map(f64::from), 0.0..1.0], 4), 1..12),
+    ) {
+        let test = friedman(&rows).unwrap();
+        prop_assert!((test.mean_ranks.iter().sum::<f64>() - 10.0).abs() < 1e-12);
+        let chances = test.pairs.iter().flat_map(|pair| [pair.nemenyi, pair.holm]);
+        for chance in chances.chain([test.chance, test.closer_chance]) {
+            prop_assert!(0.0 <= chance && chance <= 1.0, "{test:?}");
+        }
+        let costs: Vec<Vec<f64>> = rows.iter().map(|row| row.iter().map(|value| 1.0 + value).collect()).collect();
+        for profile in performance_profiles(&costs).unwrap() {
+            prop_assert!(profile.steps.is_sorted_by(|a, b| a.0 < b.0 && a.1 < b.1));
+            prop_assert_eq!(profile.steps.last().unwrap().1, 1.0);
+        }
+    }
 }
