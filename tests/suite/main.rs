@@ -23,6 +23,12 @@ mod identity;
 /// The main job against published values.
 mod published;
 
+/// Landscapes with a published lowest value.
+mod landscapes;
+
+/// The search: goals in evaluations, threads, shares, the survey.
+mod search;
+
 /// A fresh folder and the real program.
 mod folder;
 
