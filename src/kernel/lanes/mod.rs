@@ -14,6 +14,8 @@
 //! - `compound`: innermost loops made faster.
 //! - `run`: the loop over it, in three builds.
 
+#[cfg(test)]
+mod agreement;
 mod code;
 mod compound;
 mod run;
