@@ -12,6 +12,7 @@
 
 mod activity;
 mod amount;
+mod clearing;
 mod compile;
 pub mod dead;
 pub mod differentiate;
