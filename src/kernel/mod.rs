@@ -21,6 +21,8 @@ pub mod lanes;
 mod linear;
 pub mod lower;
 pub mod program;
+#[cfg(test)]
+mod random_landscapes;
 mod ranges;
 pub mod reference;
 pub mod registers;

@@ -84,6 +84,11 @@ const CONSTRUCTS: &[(&str, &str)] = &[
         "own neighbours",
         "given n = 6\ngiven next = [1, 1, 4, 4, 2, 6]\nunknown x[n] in [-1, 1]\nminimise sum(i in 1..n: sin(x[i] - x[next[i]])*x[i])",
     ),
+    // What is not a number outside the loop is used in it without a derivative.
+    (
+        "idle logarithms",
+        "given n = 3\nunknown x in [-1, -0.5]\nunknown y[n] in [-1, 1]\nminimise sum(i in 1..n: sign(if x > 0 then log(x)/x else y[i]) + y[i]^2) + x^2",
+    ),
     // The square of a difference is a part of a distance, and counts once more.
     (
         "stretched distances",
