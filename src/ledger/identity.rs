@@ -4,6 +4,10 @@
 //! `alignment`); shifts of plain and cyclic families by the mean or by a reference row; flips, reversals and cycles, a
 //! finite set, are tried one by one; exchanges, last, by giving each row its nearest. Invariants that cost little are
 //! compared first.
+//!
+//! Where promises do not respect each other (a flip of some of the rows that an exchange renumbers, a rotation of rows
+//! together whose shifts are apart) the generated group is larger than what is gone through here. Images that only the rest
+//! relates then stay two entries: too many minima, never too few.
 
 use crate::base::order::Total;
 use crate::landscape::Slot;

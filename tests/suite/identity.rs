@@ -59,17 +59,32 @@ const CASES: &[(&str, &str)] = &[
     (PAIR, "rotate p, shift p, mirror p, exchange p, rotate q, shift q, exchange q"),
     (PAIR, "shift (p, q), mirror (p, q), exchange p, flip (p, q)"),
     (PAIR, "rotate (p, q), flip q"),
-    (LINE, "exchange x, flip x[1..3]"),
     (LINE, "shift x[1..3], exchange x[4..6]"),
     (RING, "flip x[1..2], cycle x[3..6]"),
     (RING, "shift x[1..3], exchange x[1..3], flip x"),
     (PEAKS, "exchange (a, b), flip c"),
 ];
 
+/// Promises whose group the match does not go through as a whole (see `ledger/identity.rs`); the second key must not break
+/// on them.
+const TANGLED: &[(&str, &str)] = &[
+    (LINE, "exchange x, flip x[1..3]"),
+    (LINE, "shift x, flip x[1..3]"),
+    (CLOUD, "rotate p[1..4], exchange p"),
+    (CLOUD, "shift p, rotate p, flip p[1..2]"),
+    (PAIR, "rotate p, rotate (p, q)"),
+    (PAIR, "rotate (p, q), shift p, shift q"),
+    (RING, "shift x, flip x[1..3]"),
+];
+
 fn cases() -> Vec<(String, Landscape)> {
+    landscapes(CASES)
+}
+
+fn landscapes(cases: &[(&str, &str)]) -> Vec<(String, Landscape)> {
     let of =
         |(problem, promises): &(&str, &str)| (promises.to_string(), landscape(&format!("{problem}alike {promises}\n")));
-    CASES.iter().map(of).collect()
+    cases.iter().map(of).collect()
 }
 
 fn random_point(landscape: &Landscape, rng: &mut impl Rng) -> Vec<f64> {
@@ -292,7 +307,7 @@ fn dismissals_valleys_and_zero() {
 /// The number that is the ledger's second key: no member of the group may change it by more than it says.
 #[test]
 fn the_second_key_is_an_invariant() {
-    for (promises, landscape) in cases() {
+    for (promises, landscape) in cases().into_iter().chain(landscapes(TANGLED)) {
         let identity = Identity::new(&landscape.slots, &landscape.symmetries);
         for trial in 0..60 {
             let mut rng = stream(12, 0, trial, Purpose::Check);
