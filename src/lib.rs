@@ -249,7 +249,12 @@ impl Problem {
         use sha2::Digest;
         let digest = sha2::Sha256::digest(text);
         let name = self.name.rsplit(['/', '\\']).next().unwrap_or(&self.name);
+        let begins = |axes: &[AxisRange]| axes.iter().map(|axis| axis.first).collect::<Vec<i64>>();
+        let unknowns = self.landscape.unknowns.iter().map(|family| (family.name.clone(), begins(&family.axes)));
+        let shows = self.landscape.shows.iter().map(|show| (format!("show {}", show.name), begins(&show.axes)));
+        let firsts = unknowns.chain(shows).filter(|(_, firsts)| firsts.iter().any(|&first| first != 1));
         report::Problem {
+            first_indices: firsts.collect(),
             name: name.to_string(),
             title: self.landscape.title.clone(),
             sense: if self.landscape.maximise { "maximise" } else { "minimise" }.to_string(),

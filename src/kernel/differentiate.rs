@@ -88,6 +88,9 @@ struct Keep {
 struct Cell {
     register: Register,
     gated: bool,
+    /// Whether anything is added to it. A cell that stays at 0 must not be passed on: what it would be multiplied with may
+    /// be infinite or not a number where it is not used.
+    used: bool,
 }
 
 struct Reverse<'a> {
@@ -131,11 +134,12 @@ impl Reverse<'_> {
                         self.block(steps, &mut inner, false, &mut block);
                         (block, inner.cells)
                     });
-                    let gated = blocks[0].1.clone();
+                    let first = blocks[0].1.clone();
                     let (then, otherwise) = (std::mem::take(&mut blocks[0].0), std::mem::take(&mut blocks[1].0));
                     out.push(Step::When { condition: condition.clone(), then, otherwise });
                     let both = cells.into_iter().map(|(register, mut cell)| {
-                        cell.gated = gated[&register].gated || blocks[1].1[&register].gated;
+                        cell.gated = first[&register].gated || blocks[1].1[&register].gated;
+                        cell.used = first[&register].used || blocks[1].1[&register].used;
                         (register, cell)
                     });
                     self.close_cells(both.collect(), frame, out);
@@ -244,14 +248,14 @@ impl Reverse<'_> {
         for register in free_registers(steps) {
             if self.activity.is_active(register) && frame.names.contains_key(&register) {
                 let cell = self.writer(out).put(|to| Instruction::Constant { to, bits: 0 });
-                cells.insert(register, Cell { register: cell, gated: false });
+                cells.insert(register, Cell { register: cell, gated: false, used: false });
             }
         }
         cells
     }
 
     fn close_cells(&mut self, cells: BTreeMap<Register, Cell>, frame: &mut Frame, out: &mut Vec<Step>) {
-        for (register, cell) in cells {
+        for (register, cell) in cells.into_iter().filter(|(_, cell)| cell.used) {
             self.contribute(register, Amount::Register(cell.register, cell.gated), frame, out);
         }
     }
@@ -263,6 +267,7 @@ impl Reverse<'_> {
         }
         if let Some(cell) = frame.cells.get_mut(&register) {
             cell.gated |= amount.is_gated();
+            cell.used = true;
             let to = cell.register;
             let right = self.writer(out).register(amount);
             out.push(Step::Do(Instruction::Binary { to, operation: Binary::Add, left: to, right }));

@@ -95,14 +95,32 @@ impl<'a> Lowering<'a> {
 
     /// The register of a term and the number of the scope that it stands in.
     fn place(&mut self, id: TermId) -> (Register, usize) {
-        for (number, scope) in self.scopes.iter().enumerate().rev() {
-            if let Some(&register) = scope.known.get(&id) {
-                return (register, number);
+        // Parts before wholes, by a stack of our own: chains of operations can be long. Loops and choices nest by recursion.
+        let mut waiting = vec![(id, false)];
+        let mut placed = None;
+        while let Some((id, ready)) = waiting.pop() {
+            placed = self.find(id);
+            if placed.is_some() {
+                continue;
             }
+            let term = self.landscape.terms.get(id);
+            if !ready && matches!(term, Term::Unary(..) | Term::Binary(..) | Term::Power(..) | Term::Select { .. }) {
+                waiting.push((id, true));
+                let n_waiting = waiting.len();
+                waiting.extend(term.parts().map(|part| (part, false)));
+                waiting[n_waiting..].reverse();
+                continue;
+            }
+            let (register, scope) = self.compute(id);
+            self.scopes[scope].known.insert(id, register);
+            placed = Some((register, scope));
         }
-        let (register, scope) = self.compute(id);
-        self.scopes[scope].known.insert(id, register);
-        (register, scope)
+        placed.expect("the last to leave the stack is the term itself")
+    }
+
+    fn find(&self, id: TermId) -> Option<(Register, usize)> {
+        let scopes = self.scopes.iter().enumerate().rev();
+        scopes.filter_map(|(number, scope)| scope.known.get(&id).map(|&register| (register, number))).next()
     }
 
     fn compute(&mut self, id: TermId) -> (Register, usize) {

@@ -12,6 +12,7 @@
 
 mod activity;
 mod amount;
+mod clearing;
 mod compile;
 pub mod dead;
 pub mod differentiate;
@@ -20,6 +21,8 @@ pub mod lanes;
 mod linear;
 pub mod lower;
 pub mod program;
+#[cfg(test)]
+mod random_landscapes;
 mod ranges;
 pub mod reference;
 pub mod registers;

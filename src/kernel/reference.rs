@@ -85,15 +85,7 @@ impl<N: Number> Machine<'_, N> {
             Instruction::Load { buffer, at, .. } => self.buffers[buffer.0 as usize][place(at) as usize].clone(),
             Instruction::Copy { from, .. } => read(from).clone(),
             Instruction::Unary { operation, of, .. } => N::unary(*operation, read(of)),
-            Instruction::Power { of, exponent, .. } => {
-                let base = read(of);
-                let inverse = N::unary(crate::numbers::operation::Unary::Reciprocal, base);
-                let mut numbers = vec![if *exponent < 0 { inverse } else { base.clone() }];
-                for step in crate::numbers::functions::power_steps(exponent.unsigned_abs()) {
-                    numbers.push(N::binary(Binary::Multiply, &numbers[step.left], &numbers[step.right]));
-                }
-                numbers.swap_remove(numbers.len() - 1)
-            }
+            Instruction::Power { of, exponent, .. } => N::power(read(of), *exponent),
             Instruction::Binary { operation, left, right, .. } => N::binary(*operation, read(left), read(right)),
             Instruction::MultiplyAdd { left, right, plus, .. } => {
                 let product = N::binary(Binary::Multiply, read(left), read(right));

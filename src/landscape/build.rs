@@ -32,6 +32,9 @@ const MAX_TABLE: i64 = 4_000_000;
 /// Steps that one proof of an index range may take.
 const MAX_PROOF: u64 = 4_000_000;
 
+/// Terms may stand this high one above the other.
+const MAX_HEIGHT: u32 = 20_000;
+
 /// A loop around the place under construction.
 #[derive(Clone, Debug)]
 pub struct LoopScope {
@@ -80,6 +83,9 @@ impl Builder {
         let id = self.terms.add(term);
         let info = self.terms.info(id);
         self.work.resize(self.terms.len(), 0.0);
+        if info.height > MAX_HEIGHT {
+            return self.refuse(Mistake::TooIntricate, span);
+        }
         let own = match self.terms.get(id) {
             Term::Constant(_) => 0.0,
             Term::Unary(Unary::Negate | Unary::Absolute | Unary::Sign | Unary::Floor, _) => 1.0,

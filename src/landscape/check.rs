@@ -9,7 +9,7 @@ use std::rc::Rc;
 use crate::language::diagnostic::{Diagnostic, Severity, Span};
 use crate::language::suggest;
 use crate::language::tree::{Expression, File, LetForm, Name, Reduction, StatementKind};
-use crate::numbers::operation::{Binary, Unary};
+use crate::numbers::operation::{Binary, Relation, Unary};
 
 use super::build::{Builder, MAX_WORK, Outcome, Told};
 use super::calls::is_function;
@@ -155,13 +155,18 @@ pub(super) struct Checker<'a> {
     pub(super) unknowns: Vec<UnknownFamily>,
     pub(super) slots: Vec<Slot>,
     pub(super) kinks: Vec<(&'static str, Span)>,
-    pub(super) domains: Vec<(Domain, TermId, Span)>,
+    pub(super) domains: Vec<(Domain, TermId, Span, Vec<Known>)>,
+    /// Comparisons of unknowns that hold at this place.
+    pub(super) known: Vec<Known>,
     path: Vec<String>,
     /// How deep the formula at hand nests, definitions and calls included, and how much was looked at in all.
     pub(super) depth: usize,
     pub(super) steps: u64,
     pub(super) overgrown: bool,
 }
+
+/// A comparison that holds.
+pub(super) type Known = (Relation, TermId, TermId);
 
 /// Where a function is defined, to be compared with where its argument can be.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -190,6 +195,7 @@ impl<'a> Checker<'a> {
             slots: Vec::new(),
             kinks: Vec::new(),
             domains: Vec::new(),
+            known: Vec::new(),
             path: Vec::new(),
             depth: 0,
             steps: 0,
@@ -377,12 +383,13 @@ impl<'a> Checker<'a> {
         let statement = &file.statements[definition.statement];
         let loops = std::mem::take(&mut self.build.loops);
         let conditions = std::mem::take(&mut self.build.conditions);
+        let known = std::mem::take(&mut self.known);
         let locals = std::mem::take(&mut self.locals);
         let calls = std::mem::take(&mut self.calls);
         self.path.push(name.to_string());
         let symbol = self.define(statement);
         self.path.pop();
-        (self.build.loops, self.build.conditions) = (loops, conditions);
+        (self.build.loops, self.build.conditions, self.known) = (loops, conditions, known);
         (self.locals, self.calls) = (locals, calls);
         if let Some(definition) = self.definitions.get_mut(name) {
             definition.progress = Progress::Done(symbol.clone());
@@ -469,17 +476,21 @@ impl<'a> Checker<'a> {
             Unary::Absolute => self.kinks.push(("abs", word)),
             Unary::Floor => self.kinks.push(("floor", word)),
             Unary::Sign => self.kinks.push(("sign", word)),
-            Unary::Logarithm | Unary::Logarithm10 => self.domains.push((Domain::Positive, of, argument)),
-            Unary::SquareRoot => self.domains.push((Domain::NotNegative, of, argument)),
-            Unary::ArcSine | Unary::ArcCosine => self.domains.push((Domain::Unit, of, argument)),
+            Unary::Logarithm | Unary::Logarithm10 => self.note_domain(Domain::Positive, of, argument),
+            Unary::SquareRoot => self.note_domain(Domain::NotNegative, of, argument),
+            Unary::ArcSine | Unary::ArcCosine => self.note_domain(Domain::Unit, of, argument),
             _ => {}
         }
+    }
+
+    fn note_domain(&mut self, domain: Domain, of: TermId, span: Span) {
+        self.domains.push((domain, of, span, self.known.clone()));
     }
 
     pub(super) fn note_binary(&mut self, operation: Binary, left: TermId, right: TermId, a: Span, b: Span) {
         match operation {
             Binary::Divide if self.build.terms.info(right).unknowns => {
-                self.domains.push((Domain::NotZero, right, b));
+                self.note_domain(Domain::NotZero, right, b);
             }
             Binary::Power if self.build.terms.info(left).unknowns => {
                 let domain = match self.build.number(right) {
@@ -487,7 +498,7 @@ impl<'a> Checker<'a> {
                     Some(exponent) if exponent.floor() == exponent => return,
                     _ => Domain::RealBase,
                 };
-                self.domains.push((domain, left, a));
+                self.note_domain(domain, left, a);
             }
             _ => {}
         }

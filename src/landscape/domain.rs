@@ -4,9 +4,9 @@ use std::collections::HashMap;
 
 use crate::language::tree::Reduction;
 use crate::numbers::functions;
-use crate::numbers::operation::{Binary, Unary};
+use crate::numbers::operation::{Binary, Relation, Unary};
 
-use super::check::{Checker, Domain};
+use super::check::{Checker, Domain, Known};
 use super::mistake::Mistake;
 use super::term::{Term, TermId};
 
@@ -19,8 +19,17 @@ const ALL: Range = (f64::NEG_INFINITY, f64::INFINITY);
 impl Checker<'_> {
     pub(super) fn warn_domains(&mut self) {
         let mut ranges = HashMap::new();
-        for (domain, of, span) in std::mem::take(&mut self.domains) {
-            let (low, high) = self.range(of, &mut ranges, 0);
+        for (domain, of, span, known) in std::mem::take(&mut self.domains) {
+            let mut narrowed = HashMap::new();
+            let ranges = if known.is_empty() { &mut ranges } else { &mut narrowed };
+            let (low, high) = self.range(of, &known, ranges, 0);
+            let is_zero = |id: TermId| self.build.number(id) == Some(0.0);
+            let told_apart = known.iter().any(|&(relation, left, right)| {
+                relation == Relation::NotEqual && (left == of && is_zero(right) || right == of && is_zero(left))
+            });
+            if told_apart && matches!(domain, Domain::NotZero | Domain::Base) {
+                continue;
+            }
             let what = match domain {
                 Domain::NotZero if low <= 0.0 && 0.0 <= high => "this divisor can be 0",
                 Domain::Positive if low <= 0.0 => "this logarithm can be of 0 or less",
@@ -34,14 +43,15 @@ impl Checker<'_> {
         }
     }
 
-    fn range(&self, id: TermId, known: &mut HashMap<TermId, Range>, depth: usize) -> Range {
+    /// The range of a term where some comparisons are known to hold.
+    fn range(&self, id: TermId, facts: &[Known], known: &mut HashMap<TermId, Range>, depth: usize) -> Range {
         if let Some(&range) = known.get(&id) {
             return range;
         }
         if depth > 500 {
             return ALL;
         }
-        let mut of = |id: TermId| self.range(id, known, depth + 1);
+        let mut of = |id: TermId| self.range(id, facts, known, depth + 1);
         let range = match self.build.terms.get(id).clone() {
             Term::Constant(bits) => (f64::from_bits(bits), f64::from_bits(bits)),
             Term::Counter(_) | Term::Family(..) | Term::Choose { .. } => ALL,
@@ -66,10 +76,40 @@ impl Checker<'_> {
             }
             Term::Select { then, otherwise, .. } => hull([of(then), of(otherwise)].into_iter()),
         };
-        let range = if range.0.is_nan() || range.1.is_nan() { ALL } else { range };
+        let mut range = if range.0.is_nan() || range.1.is_nan() { ALL } else { range };
+        for &fact in facts {
+            let (relation, left, right) = fact;
+            if let Term::Binary(Binary::Subtract, a, b) = *self.build.terms.get(id)
+                && (a, b) == (right, left)
+                && let Some(least) = match relation {
+                    Relation::Less => Some(0.0_f64.next_up()),
+                    Relation::LessOrEqual => Some(0.0),
+                    _ => None,
+                }
+            {
+                range.0 = range.0.max(least);
+            }
+            if left == id || right == id {
+                let other = self.range(if left == id { right } else { left }, &[], &mut HashMap::new(), depth + 1);
+                range = narrow(range, relation, left == id, other);
+            }
+        }
         known.insert(id, range);
         range
     }
+}
+
+/// What is left of a range by a comparison with something in another; all of it where nothing would be left.
+fn narrow((low, high): Range, relation: Relation, is_left: bool, other: Range) -> Range {
+    let narrowed = match (relation, is_left) {
+        (Relation::Less, true) => (low, high.min(other.1.next_down())),
+        (Relation::LessOrEqual, true) => (low, high.min(other.1)),
+        (Relation::Less, false) => (low.max(other.0.next_up()), high),
+        (Relation::LessOrEqual, false) => (low.max(other.0), high),
+        (Relation::Equal, _) => (low.max(other.0), high.min(other.1)),
+        (Relation::NotEqual, _) => (low, high),
+    };
+    if narrowed.0 <= narrowed.1 { narrowed } else { (low, high) }
 }
 
 fn hull(ranges: impl Iterator<Item = Range>) -> Range {

@@ -19,6 +19,9 @@ const MAX_UNROLLED: i64 = 4;
 /// Vectors of at most this length are written out in `dot`, `norm` and whole-family reductions.
 const MAX_LISTED: usize = 8;
 
+/// Choices and sums of a list of at most this length are written one behind the other.
+const MAX_CHOICES: usize = 64;
+
 /// Formulas may nest this deep, functions and definitions that they lean on included.
 pub(super) const MAX_DEPTH: usize = 400;
 
@@ -86,18 +89,7 @@ impl Checker<'_> {
                 let inner = self.value(inner)?;
                 self.map(Unary::Negate, inner, span)
             }
-            ExpressionKind::Arithmetic { operator, left, right } => {
-                // Both sides are looked at before giving up, so that both can be told.
-                let (a, b) = (self.value(left), self.value(right));
-                let operation = match operator {
-                    Arithmetic::Add => Binary::Add,
-                    Arithmetic::Subtract => Binary::Subtract,
-                    Arithmetic::Multiply => Binary::Multiply,
-                    Arithmetic::Divide => Binary::Divide,
-                    Arithmetic::Power => Binary::Power,
-                };
-                self.pair(operation, a?, b?, left.span, right.span)
-            }
+            ExpressionKind::Arithmetic { .. } => self.chain(expression),
             ExpressionKind::Compare { .. }
             | ExpressionKind::And(..)
             | ExpressionKind::Or(..)
@@ -109,6 +101,33 @@ impl Checker<'_> {
                 Ok(Value::Number(id))
             }
         }
+    }
+
+    /// Arithmetic. A sum of many terms is a long chain of left operands: it is gone along, not down.
+    fn chain(&mut self, expression: &Expression) -> Outcome<Value> {
+        let mut links = Vec::new();
+        let mut first = expression;
+        while let ExpressionKind::Arithmetic { operator, left, right } = &first.kind {
+            links.push((operator, left.span, &**right));
+            first = left;
+        }
+        let mut value = self.value(first);
+        for (operator, left, right) in links.into_iter().rev() {
+            // Both sides are looked at before giving up, so that both can be told.
+            let other = self.value(right);
+            let operation = match operator {
+                Arithmetic::Add => Binary::Add,
+                Arithmetic::Subtract => Binary::Subtract,
+                Arithmetic::Multiply => Binary::Multiply,
+                Arithmetic::Divide => Binary::Divide,
+                Arithmetic::Power => Binary::Power,
+            };
+            value = match (value, other) {
+                (Ok(value), Ok(other)) => self.pair(operation, value, other, left, right.span),
+                _ => Err(super::build::Told),
+            };
+        }
+        value
     }
 
     fn named(&mut self, name: &str, span: Span) -> Outcome<Value> {
@@ -231,7 +250,11 @@ impl Checker<'_> {
                 if let Some(place) = flat.constant() {
                     return Ok(elements[place as usize]);
                 }
-                // A loop index picks from a list of formulas: a chain of choices, one for each.
+                // A loop index picks from a list of formulas: a chain of choices, one for each; of a long list by halves,
+                // so that choices do not nest without end.
+                if elements.len() > MAX_CHOICES {
+                    return self.halved(&flat, elements, 0, span);
+                }
                 let mut chosen = elements[elements.len() - 1];
                 for (place, &element) in elements.iter().enumerate().rev().skip(1) {
                     let here = Index::Affine(Affine::constant(place as i64));
@@ -241,6 +264,19 @@ impl Checker<'_> {
                 Ok(chosen)
             }
         }
+    }
+
+    /// The element at a place that is looked up by halving; `first` is the place of the first of the elements.
+    fn halved(&mut self, at: &Index, elements: &[TermId], first: usize, span: Span) -> Outcome<TermId> {
+        let (below, above) = match elements {
+            [only] => return Ok(*only),
+            _ => elements.split_at(elements.len() / 2),
+        };
+        let middle = first + below.len();
+        let (left, right) = (self.halved(at, below, first, span)?, self.halved(at, above, middle, span)?);
+        let middle = Index::Affine(Affine::constant(middle as i64));
+        let condition = Condition::Index(IndexCondition::Compare(Relation::Less, at.clone(), middle));
+        self.build.choose(&condition, left, right, span)
     }
 
     fn shift_places(
@@ -381,7 +417,14 @@ impl Checker<'_> {
             }
             _ => {
                 self.kinks.push(("if", condition.span));
-                (self.value(then), self.value(otherwise))
+                let n_known = self.known.len();
+                let mut under = |holds: bool, part: &Expression| {
+                    self.learn(&decided, holds);
+                    let value = self.value(part);
+                    self.known.truncate(n_known);
+                    value
+                };
+                (under(true, then), under(false, otherwise))
             }
         };
         match (then_part?, other_part?) {
@@ -397,6 +440,27 @@ impl Checker<'_> {
                 let mistake = Mistake::ShapeMismatch { left: a.describe(), right: b.describe() };
                 self.build.refuse(mistake, span)
             }
+        }
+    }
+
+    /// Notes the comparisons that follow from a condition or from its opposite.
+    fn learn(&mut self, condition: &Condition, holds: bool) {
+        match condition {
+            Condition::Index(_) => {}
+            Condition::Compare(relation, left, right) => {
+                let (relation, left, right) = match (relation, holds) {
+                    (_, true) => (*relation, *left, *right),
+                    (Relation::Less, false) => (Relation::LessOrEqual, *right, *left),
+                    (Relation::LessOrEqual, false) => (Relation::Less, *right, *left),
+                    (Relation::Equal, false) => (Relation::NotEqual, *left, *right),
+                    (Relation::NotEqual, false) => (Relation::Equal, *left, *right),
+                };
+                self.known.push((relation, left, right));
+            }
+            Condition::And(a, b) if holds => [a, b].into_iter().for_each(|part| self.learn(part, true)),
+            Condition::Or(a, b) if !holds => [a, b].into_iter().for_each(|part| self.learn(part, false)),
+            Condition::And(..) | Condition::Or(..) => {}
+            Condition::Not(inner) => self.learn(inner, !holds),
         }
     }
 
@@ -509,9 +573,19 @@ impl Checker<'_> {
             checker.build.binary(Binary::Multiply, left, right, span)
         };
         if array.count() <= MAX_LISTED || matches!(array.backing, Backing::Listed(_)) {
+            let mut parts = places_of(&array.axes).map(|places| product(self, &places)).collect::<Outcome<Vec<_>>>()?;
+            // Long lists are joined by pairs, so that terms do not nest without end.
+            while parts.len() > MAX_CHOICES {
+                parts = parts
+                    .chunks(2)
+                    .map(|pair| match *pair {
+                        [left, right] => self.build.binary(operation_of(operator), left, right, span),
+                        _ => Ok(pair[0]),
+                    })
+                    .collect::<Outcome<Vec<_>>>()?;
+            }
             let mut result = self.neutral(operator)?;
-            for places in places_of(&array.axes) {
-                let part = product(self, &places)?;
+            for part in parts {
                 result = self.build.binary(operation_of(operator), result, part, span)?;
             }
             return Ok(result);

@@ -37,15 +37,41 @@ impl<'a> TermEvaluator<'a> {
 
     /// The value of a term; `None` where an index leaves its table, which a checked landscape never does.
     pub fn value(&mut self, id: TermId) -> Option<f64> {
-        let closed = self.terms.info(id).levels == 0;
-        if closed && let Some(&known) = self.closed.get(&id) {
-            return Some(known);
+        // Operations by a stack of our own: chains of them can be long. Loops and choices nest by recursion.
+        let mut waiting = vec![(id, false)];
+        let mut values: Vec<f64> = Vec::new();
+        while let Some((id, ready)) = waiting.pop() {
+            let closed = self.terms.info(id).levels == 0;
+            let operation = self.terms.get(id);
+            let value = match operation {
+                Term::Unary(..) | Term::Binary(..) | Term::Power(..) if !ready => {
+                    if let Some(&known) = self.closed.get(&id).filter(|_| closed) {
+                        values.push(known);
+                        continue;
+                    }
+                    waiting.push((id, true));
+                    let n_waiting = waiting.len();
+                    waiting.extend(operation.parts().map(|part| (part, false)));
+                    waiting[n_waiting..].reverse();
+                    continue;
+                }
+                Term::Unary(operation, _) => functions::unary(*operation, values.pop()?),
+                Term::Binary(operation, ..) => {
+                    let (right, left) = (values.pop()?, values.pop()?);
+                    functions::binary(*operation, left, right)
+                }
+                Term::Power(_, exponent) => functions::power(values.pop()?, *exponent),
+                _ => match self.closed.get(&id).filter(|_| closed) {
+                    Some(&known) => known,
+                    None => self.compute(id)?,
+                },
+            };
+            if closed {
+                self.closed.insert(id, value);
+            }
+            values.push(value);
         }
-        let value = self.compute(id)?;
-        if closed {
-            self.closed.insert(id, value);
-        }
-        Some(value)
+        values.pop()
     }
 
     fn compute(&mut self, id: TermId) -> Option<f64> {
@@ -55,9 +81,8 @@ impl<'a> TermEvaluator<'a> {
             Term::Table(table, index) => pick(&self.tables[table as usize], self.index(&index)?)?,
             Term::Unknown(index) => pick(self.unknowns, self.index(&index)?)?,
             Term::Family(family, index) => pick(self.families.get(family as usize)?, self.index(&index)?)?,
-            Term::Unary(operation, of) => functions::unary(operation, self.value(of)?),
-            Term::Binary(operation, left, right) => functions::binary(operation, self.value(left)?, self.value(right)?),
-            Term::Power(base, exponent) => functions::power(self.value(base)?, exponent),
+            // Operations are done by `value`.
+            Term::Unary(..) | Term::Binary(..) | Term::Power(..) => self.value(id)?,
             Term::Reduce { operator, level, first, last, condition, body } => {
                 let (first, last) = (self.index(&first)?, self.index(&last)?);
                 let (mut result, operation) = match operator {

@@ -251,6 +251,8 @@ pub struct TermInfo {
     pub unknowns: bool,
     /// The levels that it depends on and does not bind itself, as bits.
     pub levels: u64,
+    /// How many terms stand one above the other in it.
+    pub height: u32,
 }
 
 /// The store of terms, each once.
@@ -295,7 +297,7 @@ impl Terms {
             Term::Constant(_) => {}
             Term::Counter(index) | Term::Table(_, index) => info.levels = index.levels(),
             Term::Unknown(index) | Term::Family(_, index) => {
-                info = TermInfo { unknowns: true, levels: index.levels() };
+                info = TermInfo { unknowns: true, levels: index.levels(), height: 0 };
             }
             _ => {}
         }
@@ -303,6 +305,7 @@ impl Terms {
             let part = self.info(part);
             info.unknowns |= part.unknowns;
             info.levels |= part.levels;
+            info.height = info.height.max(part.height + 1);
         }
         match term {
             Term::Reduce { level, first, last, condition, .. } => {

@@ -17,7 +17,8 @@ impl Checker<'_> {
     }
 
     fn names_in(&mut self, expression: &Expression, bound: &mut Vec<Name>, depth: usize) {
-        if depth > super::elaborate::MAX_DEPTH {
+        // No formula that was read is higher; see the parser's limit.
+        if depth > 1000 {
             return;
         }
         let depth = depth + 1;

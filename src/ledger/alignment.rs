@@ -60,6 +60,16 @@ impl Cloud {
         }
     }
 
+    /// Its rows.
+    pub fn rows(&self) -> &[Vec<usize>] {
+        &self.rows
+    }
+
+    /// Whether a slot is in one of its rows.
+    pub fn has_slot(&self, slot: usize) -> bool {
+        self.rows.iter().any(|row| row.contains(&slot))
+    }
+
     /// Whether these are its rows.
     pub fn has_rows(&self, rows: &[Vec<usize>]) -> bool {
         self.rows == rows
@@ -175,19 +185,19 @@ pub fn placements(cloud: &Cloud, left: &[f64], right: &[f64], near: f64, take: &
         (0..theirs.len()).filter(|&k| fits(other, k)).count()
     };
     let second = (0..ours.len())
-        .filter(|&row| row != first && sine(row) > 0.3 * spread && sine(row) > slack)
+        .filter(|&row| row != first && sine(row) > 0.3 * spread && sine(row) > 1e-9 * size)
         .min_by_key(|&row| (count_pairs(row), row));
     for other in (0..theirs.len()).filter(|&other| like(first, other)) {
         let b = &theirs[other];
-        let Some(second) = second else {
-            // All on one line: any rotation of the line onto the line.
+        if spread <= slack {
+            // All on one line, as far as can be told: any rotation of the line onto the line.
             let helper = |p: &Point| if p[0].abs() < 0.7 * length(p) { [1.0, 0.0, 0.0] } else { [0.0, 1.0, 0.0] };
             let (to, from) = (frame(a, &helper(a)), frame(b, &helper(b)));
             if take(place(&|point| turn(&to, &from, point, 1.0))) {
                 return;
             }
-            continue;
-        };
+        }
+        let Some(second) = second else { continue };
         let to = frame(a, &ours[second]);
         for (k, point) in theirs.iter().enumerate() {
             let fits = k != other

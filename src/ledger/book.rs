@@ -43,6 +43,11 @@ pub struct Ledger {
     /// Where a number leads that was merged into another.
     merged: Vec<u32>,
     by_value: BTreeSet<(Total, u32)>,
+    /// By the number of the fingerprint: the better key where many entries share a value.
+    by_number: BTreeSet<(Total, u32)>,
+    /// Valleys, by value: an arrival anywhere in one belongs to it.
+    flat: BTreeSet<(Total, u32)>,
+    n_looks: u64,
     waiting: BTreeSet<(Total, u32)>,
     n_confirmed: usize,
     dismissed: u64,
@@ -61,6 +66,9 @@ impl Ledger {
             records: Vec::new(),
             merged: Vec::new(),
             by_value: BTreeSet::new(),
+            by_number: BTreeSet::new(),
+            flat: BTreeSet::new(),
+            n_looks: 0,
             waiting: BTreeSet::new(),
             n_confirmed: 0,
             dismissed: 0,
@@ -76,7 +84,8 @@ impl Ledger {
     /// Takes in a converged descent.
     pub fn meet(&mut self, candidate: Candidate, meeting: Meeting) -> Met {
         let record = Record {
-            value: candidate.value,
+            // -0 stands below 0 in the order of keys.
+            value: candidate.value + 0.0,
             at: candidate.at,
             fingerprint: candidate.fingerprint,
             kinked: candidate.kinked,
@@ -130,6 +139,11 @@ impl Ledger {
     /// How many entries there are.
     pub fn len(&self) -> usize {
         self.by_value.len()
+    }
+
+    /// How many entries were looked at so far to find out whether arrivals are new: what meeting costs.
+    pub fn n_looks(&self) -> u64 {
+        self.n_looks
     }
 
     /// Whether there are none.
@@ -192,7 +206,7 @@ impl Ledger {
             for &(_, number) in above.take(200) {
                 let Some(right) = self.entry(EntryId(number)) else { continue };
                 let place = near * self.place_tolerance(left.record.kinked || right.record.kinked);
-                if !self.identity.alike(&left.record.fingerprint, &right.record.fingerprint, 2.0 * place) {
+                if !self.identity.alike(&left.record.fingerprint, &right.record.fingerprint, place) {
                     continue;
                 }
                 if let Match::Same(deviation) | Match::Near(deviation) =
@@ -216,11 +230,24 @@ impl Ledger {
     }
 
     /// The entries that an arrival is the same as.
-    fn same_as(&self, record: &Record) -> Vec<EntryId> {
-        let reach = self.value_tolerance(record.value, record.kinked || self.has_kinks);
-        let range = (Total(record.value - reach), 0)..=(Total(record.value + reach), u32::MAX);
-        let numbers = self.by_value.range(range).map(|&(_, number)| number);
-        numbers.filter(|&number| self.is_same(record, number)).map(EntryId).collect()
+    fn same_as(&mut self, record: &Record) -> Vec<EntryId> {
+        let kinked = record.kinked || self.has_kinks;
+        let reach = self.value_tolerance(record.value, kinked);
+        let around = |middle: f64, reach: f64| (Total(middle - reach), 0)..=(Total(middle + reach), u32::MAX);
+        let values = around(record.value, reach);
+        let candidates = if is_flat(record) {
+            self.by_value.range(values).map(|&(_, number)| number).collect()
+        } else {
+            let slack = self.identity.slack(self.place_tolerance(kinked));
+            let numbers = around(record.fingerprint.number(), slack);
+            let mut fewer = shorter(self.by_value.range(values.clone()), self.by_number.range(numbers));
+            fewer.extend(self.flat.range(values).map(|&(_, number)| number));
+            fewer.sort_unstable();
+            fewer.dedup();
+            fewer
+        };
+        self.n_looks += candidates.len() as u64;
+        candidates.into_iter().filter(|&number| self.is_same(record, number)).map(EntryId).collect()
     }
 
     fn is_same(&self, record: &Record, number: u32) -> bool {
@@ -229,8 +256,7 @@ impl Ledger {
         if (record.value - other.value).abs() > self.value_tolerance(record.value, kinked) {
             return false;
         }
-        let flat = |record: &Record| record.confirmed.as_ref().is_some_and(Confirmed::is_flat);
-        if flat(record) || flat(other) {
+        if is_flat(record) || is_flat(other) {
             // A valley is one answer: along it every place has the same value.
             return true;
         }
@@ -240,7 +266,7 @@ impl Ledger {
             return false;
         }
         let place = self.place_tolerance(kinked);
-        self.identity.alike(&record.fingerprint, &other.fingerprint, 2.0 * place)
+        self.identity.alike(&record.fingerprint, &other.fingerprint, place)
             && matches!(self.identity.compare(&other.at, &record.at, place, place), Match::Same(_))
     }
 
@@ -263,6 +289,10 @@ impl Ledger {
     fn insert(&mut self, number: u32, record: Record) {
         let key = (Total(record.value), number);
         self.by_value.insert(key);
+        self.by_number.insert((Total(record.fingerprint.number()), number));
+        if is_flat(&record) {
+            self.flat.insert(key);
+        }
         if record.confirmed.is_some() {
             self.n_confirmed += 1;
         } else if !record.kinked {
@@ -275,6 +305,8 @@ impl Ledger {
         let record = self.records[number as usize].take()?;
         let key = (Total(record.value), number);
         self.by_value.remove(&key);
+        self.by_number.remove(&(Total(record.fingerprint.number()), number));
+        self.flat.remove(&key);
         self.waiting.remove(&key);
         self.n_confirmed -= usize::from(record.confirmed.is_some());
         Some(record)
@@ -305,6 +337,28 @@ impl Ledger {
         a.kinked &= b.kinked;
         self.insert(kept, a);
         EntryId(kept)
+    }
+}
+
+fn is_flat(record: &Record) -> bool {
+    record.confirmed.as_ref().is_some_and(Confirmed::is_flat)
+}
+
+/// What the shorter of two ranges holds, found in the time that takes.
+fn shorter<'a>(
+    mut left: impl Iterator<Item = &'a (Total, u32)>,
+    mut right: impl Iterator<Item = &'a (Total, u32)>,
+) -> Vec<u32> {
+    let (mut of_left, mut of_right) = (Vec::new(), Vec::new());
+    loop {
+        match left.next() {
+            Some(&(_, number)) => of_left.push(number),
+            None => return of_left,
+        }
+        match right.next() {
+            Some(&(_, number)) => of_right.push(number),
+            None => return of_right,
+        }
     }
 }
 

@@ -4,12 +4,17 @@
 //! `alignment`); shifts of plain and cyclic families by the mean or by a reference row; flips, reversals and cycles, a
 //! finite set, are tried one by one; exchanges, last, by giving each row its nearest. Invariants that cost little are
 //! compared first.
+//!
+//! Where promises do not respect each other (a flip of some of the rows that an exchange renumbers, a rotation of rows
+//! together whose shifts are apart) the generated group is larger than what is gone through here. Images that only the rest
+//! relates then stay two entries: too many minima, never too few.
 
 use crate::base::order::Total;
 use crate::landscape::Slot;
 use crate::landscape::symmetry::Symmetry;
 
 use super::alignment::{Cloud, placements};
+use super::invariant::{Invariant, Moves, Turned};
 
 /// The most combinations of flips, reversals and cycles that are tried.
 const MAX_FINITE: usize = 20_000;
@@ -35,10 +40,18 @@ impl Default for Tolerances {
     }
 }
 
-/// Invariants of a point under the group: sorted distances from the middle for clouds, in units.
+/// Invariants of a point under the group: sorted distances from the middle for clouds, in units, and one number for all.
 #[derive(Clone, Debug, Default, PartialEq)]
 pub struct Fingerprint {
     radii: Vec<f64>,
+    number: f64,
+}
+
+impl Fingerprint {
+    /// A number that no member of the group changes.
+    pub fn number(&self) -> f64 {
+        self.number
+    }
 }
 
 /// How two points compare.
@@ -63,6 +76,7 @@ pub struct Identity {
     exchanges: Vec<Vec<Vec<usize>>>,
     /// Slots that no exchange moves.
     fixed: Vec<usize>,
+    invariant: Invariant,
 }
 
 /// A shift of rows that no rotation turns.
@@ -81,6 +95,20 @@ enum Finite {
 }
 
 impl Finite {
+    fn flipped(&self) -> Option<&Vec<usize>> {
+        match self {
+            Finite::Flip(slots) => Some(slots),
+            _ => None,
+        }
+    }
+
+    fn renumbered(&self) -> Option<&Vec<Vec<usize>>> {
+        match self {
+            Finite::Flip(_) => None,
+            Finite::Reverse(rows) | Finite::Cycle(rows) => Some(rows),
+        }
+    }
+
     fn order(&self) -> usize {
         match self {
             Finite::Flip(_) | Finite::Reverse(_) => 2,
@@ -165,21 +193,46 @@ impl Identity {
         let mut exchanged = vec![false; slots.len()];
         exchanges.iter().flatten().flatten().for_each(|&slot| exchanged[slot] = true);
         let fixed = (0..slots.len()).filter(|&slot| !exchanged[slot]).collect();
-        Identity { scale, periods, clouds, shifts, finite, exchanges, fixed }
+        let moves = Moves {
+            scale: scale.clone(),
+            periods: periods.clone(),
+            turned: clouds.iter().map(|cloud| Turned { rows: cloud.rows().to_vec(), shifts: cloud.shifts }).collect(),
+            shifted: shifts.iter().map(|shift| (shift.rows.clone(), shift.periods.clone())).collect(),
+            flipped: finite.iter().filter_map(Finite::flipped).cloned().collect(),
+            renumbered: finite.iter().filter_map(Finite::renumbered).chain(&exchanges).cloned().collect(),
+        };
+        let invariant = Invariant::new(&moves);
+        Identity { scale, periods, clouds, shifts, finite, exchanges, fixed, invariant }
     }
 
     /// The invariants of a point.
     pub fn fingerprint(&self, at: &[f64]) -> Fingerprint {
-        Fingerprint { radii: self.clouds.iter().flat_map(|cloud| cloud.sorted_radii(at)).collect() }
+        let steady = self.clouds.iter().enumerate().filter(|(number, _)| self.invariant.is_steady(*number));
+        let radii = steady.flat_map(|(_, cloud)| cloud.sorted_radii(at)).collect();
+        Fingerprint { radii, number: self.invariant.of(at) }
     }
 
-    /// Whether the invariants allow two points to be the same.
-    pub fn alike(&self, left: &Fingerprint, right: &Fingerprint, tolerance: f64) -> bool {
-        left.radii.iter().zip(&right.radii).all(|(a, b)| (a - b).abs() <= tolerance)
+    /// Whether the invariants allow two points to be the same within a deviation of each slot.
+    pub fn alike(&self, left: &Fingerprint, right: &Fingerprint, deviation: f64) -> bool {
+        // A distance changes by what its row and the middle move, in up to three columns.
+        let tolerance = 4.0 * deviation;
+        (left.number - right.number).abs() <= self.slack(deviation)
+            && left.radii.iter().zip(&right.radii).all(|(a, b)| (a - b).abs() <= tolerance)
+    }
+
+    /// By how much [`Fingerprint::number`] may differ between points that are the same within a deviation of each slot.
+    pub fn slack(&self, deviation: f64) -> f64 {
+        self.invariant.slack(deviation)
     }
 
     /// Compares two points by an explicit match. Beyond `tolerance` and up to `near` it is [`Match::Near`].
     pub fn compare(&self, left: &[f64], right: &[f64], tolerance: f64, near: f64) -> Match {
+        self.compare_counted(left, right, tolerance, near).0
+    }
+
+    /// The same, with the number of placements that were tried on the whole: what the comparison costs.
+    pub fn compare_counted(&self, left: &[f64], right: &[f64], tolerance: f64, near: f64) -> (Match, usize) {
+        let mut n_placements = 0;
         let mut least = f64::INFINITY;
         let orders: Vec<usize> = self.finite.iter().map(Finite::order).collect();
         let n_finite = orders.iter().try_fold(1_usize, |count, order| count.checked_mul(*order)).unwrap_or(MAX_FINITE);
@@ -193,15 +246,16 @@ impl Identity {
                 rest /= order;
             }
             self.align(left, turned, tolerance, near, &mut |placed| {
+                n_placements += 1;
                 let deviation = self.deviation(left, placed, near);
                 least = least.min(deviation);
                 least <= tolerance
             });
             if least <= tolerance {
-                return Match::Same(least);
+                return (Match::Same(least), n_placements);
             }
         }
-        if least <= near { Match::Near(least) } else { Match::Distinct }
+        (if least <= near { Match::Near(least) } else { Match::Distinct }, n_placements)
     }
 
     /// Offers every placement of `right` that may lie on `left`, until one is taken.
@@ -227,7 +281,10 @@ impl Identity {
         if let Some(cloud) = self.clouds.get(number) {
             let mut taken = false;
             placements(cloud, left, &right, near, &mut |placed| {
-                taken = self.align_from(number + 1, left, placed, near, take);
+                // What this cloud alone decides is looked at before the next is laid: else the counts of placements of
+                // all clouds would multiply.
+                let hopeless = self.clouds.len() > 1 && self.deviation_within(cloud, left, &placed, near) > near;
+                taken = !hopeless && self.align_from(number + 1, left, placed, near, take);
                 taken
             });
             return taken;
@@ -277,14 +334,23 @@ impl Identity {
 
     /// The largest deviation once each exchangeable row has its nearest; infinity as soon as it exceeds `limit`.
     fn deviation(&self, left: &[f64], right: &[f64], limit: f64) -> f64 {
+        self.deviation_of(&|_| true, left, right, limit)
+    }
+
+    /// The same for the slots of a cloud, but for those that are exchanged together with others.
+    fn deviation_within(&self, cloud: &Cloud, left: &[f64], right: &[f64], limit: f64) -> f64 {
+        self.deviation_of(&|slot| cloud.has_slot(slot), left, right, limit)
+    }
+
+    fn deviation_of(&self, counts: &dyn Fn(usize) -> bool, left: &[f64], right: &[f64], limit: f64) -> f64 {
         let mut most: f64 = 0.0;
-        for &slot in &self.fixed {
+        for &slot in self.fixed.iter().filter(|&&slot| counts(slot)) {
             most = most.max(self.difference(slot, left[slot], right[slot]));
             if most > limit {
                 return f64::INFINITY;
             }
         }
-        for rows in &self.exchanges {
+        for rows in self.exchanges.iter().filter(|rows| rows.iter().flatten().all(|&slot| counts(slot))) {
             // Greedy is right while the tolerance is far below the distance of rows; where rows of one point lie closer
             // than that, they are as good as equal and it does not matter which goes to which.
             let mut free: Vec<usize> = (0..rows.len()).collect();

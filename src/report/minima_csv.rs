@@ -7,14 +7,14 @@ use super::nested::Nested;
 
 /// The table: `rank`, `value`, `kind`, `residual`, `softest`, `stiffest`, a column `hits <heuristic>` each, `first
 /// evaluation`, `first round`, `first heuristic`, `show <name>` for each shown quantity, and the unknowns under their
-/// own names. An element `p[2, 3]` is counted from 1, whatever the range of its family.
+/// own names, each element with its indices as in the problem.
 pub fn minima_csv(file: &MinimaFile) -> Result<String, csv::Error> {
     let heuristics: BTreeSet<&str> = file.minima.iter().flat_map(|m| m.hits.keys()).map(String::as_str).collect();
     let mut writer = csv::Writer::from_writer(Vec::new());
     for (number, minimum) in file.minima.iter().enumerate() {
         let mut cells = cells(number + 1, minimum, &heuristics);
-        cells.extend(columns("show ", &minimum.shows));
-        cells.extend(columns("", &minimum.at));
+        cells.extend(columns("show ", &minimum.shows, &file.problem.first_indices));
+        cells.extend(columns("", &minimum.at, &file.problem.first_indices));
         if number == 0 {
             writer.write_record(cells.iter().map(|cell| &cell.0))?;
         }
@@ -44,25 +44,31 @@ fn cells(rank: usize, minimum: &Minimum, heuristics: &BTreeSet<&str>) -> Vec<(St
     cells
 }
 
-fn columns(prefix: &str, values: &BTreeMap<String, Nested>) -> Vec<(String, String)> {
+fn columns(
+    prefix: &str,
+    values: &BTreeMap<String, Nested>,
+    first_indices: &BTreeMap<String, Vec<i64>>,
+) -> Vec<(String, String)> {
     let mut columns = Vec::new();
     for (name, value) in values {
-        add_columns(&format!("{prefix}{name}"), &mut Vec::new(), value, &mut columns);
+        let name = format!("{prefix}{name}");
+        let firsts = first_indices.get(&name).map_or(&[][..], Vec::as_slice);
+        add_columns(&name, firsts, &mut Vec::new(), value, &mut columns);
     }
     columns
 }
 
-fn add_columns(name: &str, place: &mut Vec<usize>, value: &Nested, columns: &mut Vec<(String, String)>) {
+fn add_columns(name: &str, firsts: &[i64], place: &mut Vec<i64>, value: &Nested, columns: &mut Vec<(String, String)>) {
     match value {
         Nested::Number(number) if place.is_empty() => columns.push((name.to_string(), number.to_string())),
         Nested::Number(number) => {
-            let indices: Vec<String> = place.iter().map(usize::to_string).collect();
+            let indices: Vec<String> = place.iter().map(i64::to_string).collect();
             columns.push((format!("{name}[{}]", indices.join(", ")), number.to_string()));
         }
         Nested::Array(parts) => {
             for (number, part) in parts.iter().enumerate() {
-                place.push(number + 1);
-                add_columns(name, place, part, columns);
+                place.push(firsts.get(place.len()).copied().unwrap_or(1) + number as i64);
+                add_columns(name, firsts, place, part, columns);
                 place.pop();
             }
         }
@@ -87,6 +93,18 @@ mod tests {
              2,-0.5,interior,0.000000000000003,2.5,7,0,1,1204,3,hop,0.25,2,0.1,-0."
                 + &"0".repeat(299)
                 + "1,4\n"
+        );
+    }
+
+    /// The header of a family with a range of its own is that of the problem, which a table of starts is read by.
+    #[test]
+    fn indices_are_those_of_the_problem() {
+        let mut file = sample();
+        file.problem.first_indices = [("p".to_string(), vec![0, -1])].into();
+        let table = minima_csv(&file).unwrap();
+        assert!(
+            table.lines().next().unwrap().ends_with("\"p[0, -1]\",\"p[0, 0]\",\"p[1, -1]\",\"p[1, 0]\""),
+            "{table}"
         );
     }
 }

@@ -70,6 +70,10 @@ pub struct Problem {
     pub givens: BTreeMap<String, f64>,
     /// The SHA-256 of its text, in hexadecimal.
     pub digest: String,
+    /// Where the indices of a family do not all begin at 1: where each of them begins. Shown families stand under `show`
+    /// and their name.
+    #[serde(default, skip_serializing_if = "BTreeMap::is_empty")]
+    pub first_indices: BTreeMap<String, Vec<i64>>,
 }
 
 /// One distinct minimum.
@@ -286,6 +290,7 @@ pub(super) mod tests {
                 sense: "minimise".to_string(),
                 givens: [("n".to_string(), 2.0)].into(),
                 digest: "00".repeat(32),
+                first_indices: BTreeMap::new(),
             },
             seed: 7,
             evaluations: 12_000,

@@ -79,6 +79,21 @@ const CONSTRUCTS: &[(&str, &str)] = &[
         "given t = [0, 1, 2, 3, 4, 5]\ngiven y = [2, 1.4, 1.1, 0.8, 0.7, 0.5]\nunknown a in [0, 5]\nunknown k in [0, 2]\nminimise sum(i in 1..count(t): (y[i] - a*exp(-k*t[i]))^2)",
     ),
     ("maximise", "unknown x in [-1, 1]\nmaximise cos(x) - x^2"),
+    // Some are their own neighbours: what is added to a row of the gradient is also deducted from it.
+    (
+        "own neighbours",
+        "given n = 6\ngiven next = [1, 1, 4, 4, 2, 6]\nunknown x[n] in [-1, 1]\nminimise sum(i in 1..n: sin(x[i] - x[next[i]])*x[i])",
+    ),
+    // What is not a number outside the loop is used in it without a derivative.
+    (
+        "idle logarithms",
+        "given n = 3\nunknown x in [-1, -0.5]\nunknown y[n] in [-1, 1]\nminimise sum(i in 1..n: sign(if x > 0 then log(x)/x else y[i]) + y[i]^2) + x^2",
+    ),
+    // The square of a difference is a part of a distance, and counts once more.
+    (
+        "stretched distances",
+        "given n = 5\nunknown p[n, 3] in [-2, 2]\nlet s(i, j) = sum(k in 1..3: (p[i,k] - p[j,k])^2)\nminimise sum(i in 1..n, j in i+1..n: exp(-s(i,j)) + (p[i,1] - p[j,1])^2/(1 + s(i,j)))",
+    ),
 ];
 
 fn points(landscape: &Landscape, count: usize) -> Vec<Vec<f64>> {

@@ -1,12 +1,13 @@
 //! The flat code.
 
-use std::collections::{BTreeMap, HashMap};
+use std::collections::{BTreeMap, HashMap, HashSet};
 
 use crate::kernel::program::{BufferId, Instruction, Program, Register, Role, Step};
 use crate::landscape::term::{Affine, Index, IndexCondition};
 use crate::numbers::operation::{Binary, Unary};
 
 use super::compound::{Standing, can_pair, join, temporaries, widen};
+use super::lives::live_behind_loops;
 
 /// The place of a pointer to a row.
 pub type Pointer = u32;
@@ -242,8 +243,15 @@ impl Code {
             rows,
             depth: 0,
         };
-        let mut maker =
-            Maker { program, code, assignments, aliases: HashMap::new(), fixed: HashMap::new(), open: Vec::new() };
+        let mut maker = Maker {
+            program,
+            code,
+            assignments,
+            live_behind: live_behind_loops(program),
+            aliases: HashMap::new(),
+            fixed: HashMap::new(),
+            open: Vec::new(),
+        };
         maker.block(&program.body)?;
         Some(maker.code)
     }
@@ -270,6 +278,8 @@ struct Maker<'a> {
     program: &'a Program,
     code: Code,
     assignments: Vec<u32>,
+    /// For each loop, the registers that are read behind it.
+    live_behind: Vec<HashSet<Register>>,
     /// Registers that are a row of a read-only buffer and nothing else.
     aliases: HashMap<Register, Pointer>,
     /// Pointers to rows that do not move.
@@ -313,13 +323,14 @@ impl Maker<'_> {
                         match (cursor.moves, cursor.stride) {
                             (Moves::Pointer(pointer, _), Some(stride)) => {
                                 let way = if scope.descending { -1 } else { 1 };
-                                scope.steps.push((pointer, (way * stride) as isize));
+                                scope.steps.push((pointer, stride.wrapping_mul(way) as isize));
                             }
                             _ => scope.others.push(cursor.clone()),
                         }
                     }
                     for &(first, second, rows) in &scope.second {
-                        scope.pair_steps.extend([(first, 2 * rows), (second, 2 * rows)]);
+                        let two = rows.wrapping_mul(2);
+                        scope.pair_steps.extend([(first, two), (second, two)]);
                     }
                     self.put(Kind::End, 0, [0; 4], number as u32);
                     self.code.loops[number].exit = self.here();
@@ -345,8 +356,11 @@ impl Maker<'_> {
         let plain = self.code.operations.split_off(self.code.loops[number].body as usize);
         let n_registers = self.program.registers as usize;
         let pointers = self.code.pointers.clone();
-        let temporary = temporaries(&plain, |pointer| pointers[pointer as usize] < n_registers);
-        let single = join(&plain, &temporary);
+        let behind = &self.live_behind[number];
+        let temporary = temporaries(&plain, |pointer| {
+            let row = pointers[pointer as usize];
+            row < n_registers && !behind.contains(&Register(row as u32))
+        });
         let scope = &self.code.loops[number];
         let mut standing = BTreeMap::new();
         let mut plain_cursors = !scope.descending;
@@ -358,9 +372,26 @@ impl Maker<'_> {
                 _ => plain_cursors = false,
             }
         }
+        let buffer_of = |pointer: Pointer| {
+            let row = pointers[pointer as usize];
+            self.code.buffer_rows.partition_point(|&first| first <= row)
+        };
+        let is_moving = |pointer: Pointer| {
+            let moves = |cursor: &Cursor| matches!(cursor.moves, Moves::Pointer(moved, _) if moved == pointer);
+            scope.cursors.iter().any(moves)
+        };
+        // Rows that are never the same in one turn.
+        let apart = |a: Pointer, b: Pointer| {
+            buffer_of(a) != buffer_of(b)
+                || match (standing.get(&a), standing.get(&b)) {
+                    (Some(a), Some(b)) => a.row.factors == b.row.factors && a.row.constant != b.row.constant,
+                    _ => !is_moving(a) && !is_moving(b) && a != b,
+                }
+        };
+        let single = join(&plain, &temporary, &apart);
         if plain_cursors && can_pair(&single, &temporary, &standing) {
             let mut renamed = BTreeMap::new();
-            for pointer in temporary {
+            for &pointer in &temporary {
                 self.code.rows += 1;
                 let row = self.code.rows - 1;
                 renamed.insert(pointer, self.new_pointer(row)?);
@@ -374,7 +405,9 @@ impl Maker<'_> {
             let rename = |pointer: Pointer| renamed.get(&pointer).copied().unwrap_or(pointer);
             self.code.loops[number].pair = Some(self.here());
             let renamed: Vec<Operation> = single.iter().map(|operation| operation.with_pointers(rename)).collect();
-            let (firsts, seconds) = (widen(&single, &mut self.code.wides), widen(&renamed, &mut self.code.wides));
+            let others = temporary.iter().map(|&pointer| rename(pointer)).collect();
+            let firsts = widen(&single, &temporary, &mut self.code.wides);
+            let seconds = widen(&renamed, &others, &mut self.code.wides);
             for (first, second) in firsts.into_iter().zip(seconds) {
                 self.code.operations.push(Operation { twin: true, ..first });
                 self.code.operations.push(second);
@@ -382,7 +415,7 @@ impl Maker<'_> {
             self.put(Kind::EndPair, 0, [0; 4], number as u32);
             self.code.loops[number].body = self.here();
         }
-        let single = widen(&single, &mut self.code.wides);
+        let single = widen(&single, &temporary, &mut self.code.wides);
         self.code.operations.extend(single);
         Some(())
     }
@@ -416,11 +449,25 @@ impl Maker<'_> {
         }
     }
 
+    /// The whole number that an index is, if no counter is in it. One that looks up a place which is not there stands
+    /// where no run gets; the verifier has shown it.
+    fn constant(&self, index: &Index) -> Option<i64> {
+        match index {
+            Index::Lookup { table, at } if at.factors.is_empty() => {
+                let values = &self.program.lookups[*table as usize];
+                Some(usize::try_from(at.constant).ok().and_then(|place| values.get(place)).copied().unwrap_or(0))
+            }
+            _ => index.constant(),
+        }
+    }
+
     /// The pointer to a row of a buffer, kept by the innermost loop where it moves.
     fn buffer(&mut self, buffer: BufferId, at: &Index) -> Option<Pointer> {
         let first = self.code.buffer_rows[buffer.0 as usize];
-        let Some(&number) = self.open.last().filter(|_| at.constant().is_none()) else {
-            return self.fixed((first as i64 + at.constant().unwrap_or(0)) as usize);
+        let Some(&number) = self.open.last().filter(|_| self.constant(at).is_none()) else {
+            // Outside only where no run gets; the verifier has shown it.
+            let row = self.constant(at).unwrap_or(0).clamp(0, self.program.buffers[buffer.0 as usize].length as i64);
+            return self.fixed(first + row as usize);
         };
         for cursor in &self.code.loops[number].cursors {
             if let Moves::Pointer(pointer, row) = cursor.moves
@@ -485,15 +532,19 @@ impl Maker<'_> {
         };
         match *instruction {
             Instruction::Constant { bits, .. } => self.fill(to, f64::from_bits(bits)),
-            Instruction::Number { ref index, .. } => match index.constant() {
+            Instruction::Number { ref index, .. } => match self.constant(index) {
                 Some(whole) => self.fill(to, whole as f64),
                 None => {
                     let place = self.place(None, index);
                     self.put(Kind::Number, to, from, place);
                 }
             },
-            Instruction::Table { table, ref at, .. } => match at.constant() {
-                Some(place) => self.fill(to, self.program.tables[table as usize][place as usize]),
+            Instruction::Table { table, ref at, .. } => match self.constant(at) {
+                Some(place) => {
+                    // Outside only where no run gets; the verifier has shown it.
+                    let value = self.program.tables[table as usize].get(place as usize).copied().unwrap_or(0.0);
+                    self.fill(to, value);
+                }
                 None => {
                     let place = self.place(Some(table), at);
                     self.put(Kind::Table, to, from, place);

@@ -12,13 +12,18 @@ use crate::landscape::term::Affine;
 use super::code::{Kind, Operation, Pointer};
 
 /// Joins operations whose intermediate result nothing else needs. `temporary` are the pointers to registers that each
-/// turn sets before it reads them.
-pub fn join(operations: &[Operation], temporary: &BTreeSet<Pointer>) -> Vec<Operation> {
+/// turn sets before it reads them and nothing reads behind the loop; `apart` says of two pointers that they never point
+/// to one row in one turn.
+pub fn join(
+    operations: &[Operation],
+    temporary: &BTreeSet<Pointer>,
+    apart: &dyn Fn(Pointer, Pointer) -> bool,
+) -> Vec<Operation> {
     let mut joined = Vec::with_capacity(operations.len());
     let mut place = 0;
     while place < operations.len() {
         let rest = &operations[place..];
-        let (operation, length) = spread(rest, temporary)
+        let (operation, length) = spread(rest, temporary, apart)
             .or_else(|| square(rest))
             .or_else(|| add_difference(rest, temporary))
             .or_else(|| add_less_product(rest, temporary))
@@ -31,7 +36,11 @@ pub fn join(operations: &[Operation], temporary: &BTreeSet<Pointer>) -> Vec<Oper
 }
 
 /// `t = a * b; to = to + t; row = row - t`
-fn spread(rest: &[Operation], temporary: &BTreeSet<Pointer>) -> Option<(Operation, usize)> {
+fn spread(
+    rest: &[Operation],
+    temporary: &BTreeSet<Pointer>,
+    apart: &dyn Fn(Pointer, Pointer) -> bool,
+) -> Option<(Operation, usize)> {
     let [product, sum, difference, after @ ..] = rest else { return None };
     let t = product.to;
     let [a, b, ..] = product.from;
@@ -42,7 +51,8 @@ fn spread(rest: &[Operation], temporary: &BTreeSet<Pointer>) -> Option<(Operatio
         && (difference.from[0], difference.from[1]) == (difference.to, t)
         && sum.to != t
         && difference.to != t
-        && sum.to != difference.to
+        // Both are read before either is written.
+        && apart(sum.to, difference.to)
         && ![a, b].contains(&sum.to)
         && ![a, b].contains(&difference.to)
         && is_dead(t, after, temporary);
@@ -119,13 +129,18 @@ fn powers(rest: &[Operation]) -> Option<(Operation, usize)> {
 
 /// Joins the three squares of a distance, and three spreads in a row, into one operation each.
 ///
-/// To be called last: wide operations keep their pointers aside. Two lists of the same kinds widen alike.
-pub fn widen(operations: &[Operation], wides: &mut Vec<[Pointer; 12]>) -> Vec<Operation> {
+/// To be called last: wide operations keep their pointers aside. Two lists that differ in the names of pointers alone
+/// widen alike.
+pub fn widen(
+    operations: &[Operation],
+    temporary: &BTreeSet<Pointer>,
+    wides: &mut Vec<[Pointer; 12]>,
+) -> Vec<Operation> {
     let mut widened = Vec::with_capacity(operations.len());
     let mut place = 0;
     while place < operations.len() {
-        let [first, second, third] = match &operations[place..] {
-            [first, second, third, ..] => [first, second, third],
+        let ([first, second, third], after) = match &operations[place..] {
+            [first, second, third, after @ ..] => ([first, second, third], after),
             rest => {
                 widened.extend(rest);
                 break;
@@ -136,9 +151,17 @@ pub fn widen(operations: &[Operation], wides: &mut Vec<[Pointer; 12]>) -> Vec<Op
         let results = [first.to, second.to, third.to, third.from[2]];
         let inputs = [first.from[0], first.from[1], second.from[0], second.from[1], third.from[0], third.from[1]];
         let apart = (0..4).all(|k| !inputs.contains(&results[k]) && !results[..k].contains(&results[k]));
+        // The squares and their first sum are not written.
+        let passing = || {
+            [first.from[2], second.from[2]].iter().all(|square| {
+                !inputs.contains(square)
+                    && (results.contains(square) || is_dead(*square, after, temporary))
+                    && !results[..3].contains(square)
+            })
+        };
         let kinds = (first.kind, second.kind, third.kind);
         let kind = match kinds {
-            (Kind::Square, Kind::SquareAdd, Kind::SquareAdd) if chained && apart => Kind::Distance,
+            (Kind::Square, Kind::SquareAdd, Kind::SquareAdd) if chained && apart && passing() => Kind::Distance,
             (Kind::Spread, Kind::Spread, Kind::Spread) => Kind::SpreadThree,
             _ => {
                 widened.push(*first);
@@ -181,12 +204,13 @@ fn is_dead(register: Pointer, after: &[Operation], temporary: &BTreeSet<Pointer>
     temporary.contains(&register)
 }
 
-/// The pointers to registers that a turn sets before it reads them: nothing passes through them to another turn.
-pub fn temporaries(operations: &[Operation], is_register: impl Fn(Pointer) -> bool) -> BTreeSet<Pointer> {
+/// The pointers that a turn sets before it reads them, of those that may count: nothing passes through them to another
+/// turn.
+pub fn temporaries(operations: &[Operation], may_count: impl Fn(Pointer) -> bool) -> BTreeSet<Pointer> {
     let (mut temporary, mut carried) = (BTreeSet::new(), BTreeSet::new());
     for operation in operations {
         carried.extend(operation.reads().into_iter().filter(|pointer| !temporary.contains(pointer)));
-        let set = operation.writes().into_iter().filter(|pointer| is_register(*pointer) && !carried.contains(pointer));
+        let set = operation.writes().into_iter().filter(|pointer| may_count(*pointer) && !carried.contains(pointer));
         temporary.extend(set.collect::<Vec<_>>());
     }
     temporary

@@ -11,16 +11,21 @@
 //! rows, loops with known cursors, nothing that depends on a lane.
 //!
 //! - `code`: the flat code and how it is made.
-//! - `compound`: innermost loops made faster.
+//! - `compound`: innermost loops made faster; `lives`: what they must leave behind.
 //! - `run`: the loop over it, in three builds.
 
+#[cfg(test)]
+mod agreement;
 mod code;
 mod compound;
+mod lives;
 mod run;
 
+use std::ops::Range;
 use std::sync::Arc;
 
-use super::program::Role;
+use super::clearing::buffers_to_clear;
+use super::program::{BufferId, Role};
 use super::verify::Verified;
 
 pub use run::Build;
@@ -49,6 +54,8 @@ pub struct LaneMachine {
     lanes: usize,
     build: Build,
     memory: Vec<Line>,
+    /// Buffers to be cleared before each run.
+    cleared: Vec<Range<usize>>,
     state: run::State,
 }
 
@@ -70,7 +77,11 @@ impl LaneMachine {
         let code = Code::new(program.program()).expect("no program within the work limit has 2^32 rows");
         let memory = vec![Line([0.0; 8]); (code.rows * lanes).div_ceil(8)];
         let state = run::State::new(&code);
-        LaneMachine { program: program.clone(), code, lanes, build: build.min(Build::best()), memory, state }
+        let (build, program) = (build.min(Build::best()), program.clone());
+        let mut machine = LaneMachine { program, code, lanes, build, memory, cleared: Vec::new(), state };
+        machine.cleared =
+            buffers_to_clear(machine.program.program()).into_iter().map(|id| machine.range_of(id)).collect();
+        machine
     }
 
     /// The number of lanes.
@@ -89,23 +100,25 @@ impl LaneMachine {
         &flat(&self.memory)[self.range(role)]
     }
 
-    /// Runs the program once on all lanes.
+    /// Runs the program once on all lanes, from buffers at zero but for the read-only ones: a run never sees an earlier
+    /// one.
     pub fn run(&mut self) {
+        for range in &self.cleared {
+            flat_mut(&mut self.memory)[range.clone()].fill(0.0);
+        }
         let (code, program) = (&self.code, self.program.program());
         let n_places = code.rows * self.lanes;
         let (memory, state) = (&mut flat_mut(&mut self.memory)[..n_places], &mut self.state);
         run::run(self.build, run::Run { code, program, lanes: self.lanes, memory, state });
     }
 
-    fn range(&self, role: Role) -> std::ops::Range<usize> {
-        let program = self.program.program();
-        match program.buffer(role) {
-            None => 0..0,
-            Some(id) => {
-                let first = self.code.buffer_rows[id.0 as usize];
-                first * self.lanes..(first + program.buffers[id.0 as usize].length) * self.lanes
-            }
-        }
+    fn range(&self, role: Role) -> Range<usize> {
+        self.program.program().buffer(role).map_or(0..0, |id| self.range_of(id))
+    }
+
+    fn range_of(&self, id: BufferId) -> Range<usize> {
+        let first = self.code.buffer_rows[id.0 as usize];
+        first * self.lanes..(first + self.program.program().buffers[id.0 as usize].length) * self.lanes
     }
 }
 

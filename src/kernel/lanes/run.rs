@@ -299,7 +299,7 @@ unsafe fn interpret<const K: usize, const C: usize>(run: Run<'_>) {
                 {
                     for &(first, second, rows) in &scope.second {
                         state.pointers[second as usize] =
-                            state.pointers[first as usize].wrapping_offset(rows * K as isize);
+                            state.pointers[first as usize].wrapping_offset(rows.wrapping_mul(K as isize));
                     }
                     place = pair as usize;
                 }
@@ -316,7 +316,7 @@ unsafe fn interpret<const K: usize, const C: usize>(run: Run<'_>) {
                 for &(pointer, rows) in &scope.pair_steps {
                     // SAFETY: pointers are numbered below the length of `pointers`.
                     let pointer = unsafe { state.pointers.get_unchecked_mut(pointer as usize) };
-                    *pointer = pointer.wrapping_offset(rows * K as isize);
+                    *pointer = pointer.wrapping_offset(rows.wrapping_mul(K as isize));
                 }
                 place = if left >= 2 { scope.pair.unwrap_or(scope.body) } else { scope.body } as usize;
             }
@@ -329,11 +329,14 @@ unsafe fn interpret<const K: usize, const C: usize>(run: Run<'_>) {
                     for &(pointer, rows) in &scope.steps {
                         // SAFETY: pointers are numbered below the length of `pointers`.
                         let pointer = unsafe { state.pointers.get_unchecked_mut(pointer as usize) };
-                        *pointer = pointer.wrapping_offset(rows * K as isize);
+                        *pointer = pointer.wrapping_offset(rows.wrapping_mul(K as isize));
                     }
                     for cursor in &scope.others {
                         match (cursor.stride, cursor.moves) {
-                            (Some(stride), Moves::Place(number)) => state.places[number as usize] += way * stride,
+                            (Some(stride), Moves::Place(number)) => {
+                                let place = &mut state.places[number as usize];
+                                *place = place.wrapping_add(stride.wrapping_mul(way));
+                            }
                             _ => set::<K>(cursor, memory, state, &program.lookups),
                         }
                     }
@@ -362,7 +365,8 @@ fn set<const K: usize>(cursor: &Cursor, memory: *mut f64, state: &mut State, loo
     };
     match cursor.moves {
         Moves::Pointer(pointer, row) => {
-            state.pointers[pointer as usize] = memory.wrapping_offset((row as i64 + value) as isize * K as isize);
+            state.pointers[pointer as usize] =
+                memory.wrapping_offset(((row as i64).wrapping_add(value) as isize).wrapping_mul(K as isize));
         }
         Moves::Place(number) => state.places[number as usize] = value,
     }
