@@ -29,7 +29,12 @@ pub(super) fn coverage_text(coverage: &Coverage, word: &str) -> String {
         ));
     }
     if let Some(next) = coverage.next.first() {
-        out.push_str(&format!("  A further start meets a new one with chance {}", chance(next.chance)));
+        out.push_str(&format!(
+            "  A further start meets a new one with chance {} ({} to {})",
+            chance(next.chance),
+            chance(next.interval.low),
+            chance(next.interval.high)
+        ));
         if let Some(more) = coverage.next.last().filter(|more| more.starts > 1) {
             out.push_str(&format!(
                 "; {} further starts would add about {}",
@@ -101,11 +106,16 @@ fn percent(share: f64) -> String {
 }
 
 fn chance(chance: f64) -> String {
-    if chance > 0.0 && chance < 1e-3 { format!("{chance:.1e}") } else { format!("{chance:.3}") }
+    match chance {
+        chance if chance <= 0.0 => "0".to_string(),
+        chance if chance < 1e-3 => format!("{chance:.1e}"),
+        chance => format!("{chance:.3}"),
+    }
 }
 
 fn number(x: f64) -> String {
-    if x < 99.5 { format!("{x:.1}") } else { grouped(x.round() as u64) }
+    // No negative zero.
+    if x < 99.5 { format!("{:.1}", x.max(0.0)) } else { grouped(x.round() as u64) }
 }
 
 #[cfg(test)]

@@ -140,7 +140,7 @@ lowest value met: -1
 Survey: 40 descents from independent uniform starts met 2 distinct minima, 1 of them once.
   1 more led to no minimum; the figures speak of the rest of the start region.
   Covered: 97.5 % of the start region drains to minima that the survey met (86.0 % to 99.900 %; assumes nothing of the basins' sizes).
-  A further start meets a new one with chance 0.025.
+  A further start meets a new one with chance 0.025 (0.001 to 0.140).
   Basins: at least about 2.0 (2.0 to 4.5; a lower bound, far too low where very many are tiny).
   If all basin sizes were equally likely beforehand (Boender and Rinnooy Kan): 2.2 basins, 99.615 % covered.
   The basin of the lowest: 97.5 % of the start region (0 % to 100 %; exact for a basin named in advance).

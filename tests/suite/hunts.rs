@@ -81,6 +81,14 @@ fn budgets_end_hunts() {
     let ran = hunt(&folder, PORE, &["--for", "1s", "--name", "time"]);
     assert_eq!(ran.status, Some(0), "{ran:?}");
     assert_eq!(json(&folder.path().join("results/time/run.json"))["end"]["reason"], "time");
+    let ran = hunt(&folder, PORE, &["--until", "coverage=0.5", "--evals", "1e6", "--name", "covered"]);
+    assert!(ran.out.contains("Coverage reached"), "{ran:?}");
+    assert!(
+        json(&folder.path().join("results/covered/minima.json"))["coverage"]["covered"]["interval"]["low"].as_f64()
+            >= Some(0.5)
+    );
+    let ran = hunt(&folder, PORE, &["--until", "quiet=5e3", "--evals", "1e6", "--name", "quiet"]);
+    assert!(ran.out.contains("No lower value for long"), "{ran:?}");
     // A small budget is not overrun by a whole round.
     hunt(&folder, PORE, &["--evals", "500", "--name", "small"]);
     let spent = json(&folder.path().join("results/small/minima.json"))["evaluations"].as_u64().unwrap();
@@ -163,7 +171,9 @@ fn what_cannot_be_done_is_refused_before_a_folder_is_made() {
     refused(WELLS, &["--mix", "hop,hop"], "named twice");
     refused(WELLS, &["--given", "n=3"], "no given `n`");
     refused(WELLS, &["--given", "n=3..5"], "not available yet");
-    refused(WELLS, &["--until", "coverage=0.9"], "not available yet");
+    refused(WELLS, &["--until", "coverage=90"], "between 0 and 1");
+    refused(WELLS, &["--until", "coverage=0.9", "--survey", "0"], "needs a survey");
+    refused(WELLS, &["--until", "luck=1"], "no condition `luck`");
     refused(WELLS, &["--evals", "0"], "not a whole number of evaluations");
     refused(WELLS, &["--survey", "2"], "not a share");
     refused(WELLS, &["--name", "../up"], "--name");

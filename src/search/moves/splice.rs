@@ -74,8 +74,7 @@ mod tests {
             shifts: true,
         };
         let mut rng = stream(5, 0, 0, Purpose::Task);
-        let random =
-            |rng: &mut _| (0..n).map(|_| random_direction(3, rng)).collect::<Vec<_>>();
+        let random = |rng: &mut _| (0..n).map(|_| random_direction(3, rng)).collect::<Vec<_>>();
         for _ in 0..50 {
             let (mother, father) = (random(&mut rng), random(&mut rng));
             let child = splice_points(&cloud, &mother, &father, &mut rng);
