@@ -3,6 +3,8 @@
 //! Used twice: between heuristics, and inside a heuristic between its ways to propose. It is probability matching
 //! (Goldberg 1990; Thierens 2005): greedier rules starve members whose time comes late.
 
+use crate::numbers::functions;
+
 /// How much of its share at the beginning a member keeps in a short hunt whatever it earns.
 pub const EARLY_FLOOR: f64 = 0.3;
 /// Descents after which a hunt stands half way between its first bets and the hedge.
@@ -72,8 +74,12 @@ impl Earnings {
             self.accounts.iter().fold((0.0, 0.0), |sum, account| (sum.0 + account.reward, sum.1 + account.spent));
         let common = if spent > 0.0 { reward / spent } else { 0.0 };
         let score = |account: &Account| {
+            if account.beginning == 0.0 {
+                return 0.0;
+            }
             let rate = (account.reward + common * self.trust) / (account.spent + self.trust);
-            account.beginning * rate
+            // The first bets fade with age; what is left is what was earned.
+            functions::real_power(account.beginning, 1.0 - self.age) * rate
         };
         let total: f64 = self.accounts.iter().map(score).sum();
         let floor = |account: &Account| (1.0 - self.age) * EARLY_FLOOR * account.beginning + self.age * account.hedge;

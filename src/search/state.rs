@@ -8,6 +8,7 @@ use std::sync::Arc;
 
 use crate::base::random::{Purpose, stream};
 use crate::ledger::{EntryId, Identity, Ledger, Meeting};
+use crate::numbers::functions;
 use crate::statistics::{Confidence, Frequencies, Unconverged, coverage};
 
 use super::outcome::{Ending, Troubles};
@@ -26,8 +27,11 @@ const ROUND_SHARE: f64 = 0.01;
 /// The most tasks of a round.
 const LARGEST_ROUND: f64 = 2048.0;
 
-/// What the lowest value so far is worth when it is new; a new minimum with k lower ones is worth 1/(1 + k).
+/// What the lowest value so far is worth when it is new; a new minimum with k lower ones is worth 1/(1 + k) while lower values are
+/// being met.
 const WORTH_LOWEST: f64 = 5.0;
+/// Descents without a lower value after which rank counts half as much, in the exponent.
+const LISTING: f64 = 4000.0;
 /// Lower minima that are counted for that.
 const RANKED: usize = 200;
 
@@ -52,6 +56,8 @@ pub struct Hunt {
     rounds_merged: u64,
     /// The evaluations after which the lowest value so far was met.
     last_lower: u64,
+    /// Descents that had ended by then.
+    last_lower_descents: u64,
     /// Descents of the survey before which its coverage is not worked out again.
     next_coverage: u64,
 }
@@ -69,6 +75,7 @@ impl Hunt {
             given_drawn: 0,
             rounds_merged: 0,
             last_lower: 0,
+            last_lower_descents: 0,
             next_coverage: 1,
             settings,
             structure,
@@ -146,6 +153,7 @@ impl Hunt {
                     let lower = before.is_none_or(|before| before.is_above(candidate.value));
                     if lower {
                         self.last_lower = evaluation;
+                        self.last_lower_descents = self.schedule().descents().iter().sum();
                     }
                     let met = self.ledger.meet(candidate, meeting);
                     if met.new {
@@ -198,11 +206,16 @@ impl Hunt {
     fn worth(&self, entry: EntryId) -> f64 {
         let Some(value) = self.ledger.entry(entry).map(|entry| entry.value()) else { return 0.0 };
         let lower = self.ledger.entries().take(RANKED).take_while(|other| other.value() < value).count();
-        match lower {
-            0 => WORTH_LOWEST,
-            RANKED => 1.0 / self.ledger.len() as f64,
-            lower => 1.0 / (1 + lower) as f64,
-        }
+        let rank = match lower {
+            0 => return WORTH_LOWEST,
+            RANKED => self.ledger.len() as f64,
+            lower => (1 + lower) as f64,
+        };
+        // The longer nothing lower has been met, the more a new minimum is worth wherever it lies: the hunt turns to listing.
+        let descents: u64 = self.schedule().descents().iter().sum();
+        let quiet = (descents - self.last_lower_descents) as f64;
+        let flatness = quiet / (quiet + LISTING);
+        functions::real_power(rank, flatness - 1.0)
     }
 
     /// Confirmations of the lowest entries that still wait, `most` at most: the closing of a hunt.
