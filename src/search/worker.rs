@@ -4,7 +4,7 @@ use std::sync::Arc;
 use std::sync::mpsc::Sender;
 
 use crate::base::random::{Purpose, stream};
-use crate::descent::{Ask, Confirmation, Descent, EndKind, Judgement, Progress, Region};
+use crate::descent::{Ask, Confirmation, Descents, EndKind, Judgement, Region};
 use crate::evaluate::Evaluator;
 use crate::kernel::Kernel;
 use crate::ledger::{Candidate, Confirmed, Identity, Kind};
@@ -17,6 +17,9 @@ use super::task::{Finding, Lost, Proposal, Task, TaskResult, Work};
 
 /// Tasks that a worker has in hand at once.
 const LANES: usize = 32;
+
+/// Lanes of the narrowest machine that descents can read.
+const LEAST_LANES: usize = 8;
 
 /// Times that a cloud at its bounds is brought back to the middle within one descent.
 const MOST_RECENTRINGS: u32 = 3;
@@ -51,14 +54,11 @@ impl Workshop {
 pub struct Worker<'a> {
     shop: &'a Workshop,
     evaluator: Evaluator,
-    benches: Vec<Bench>,
+    /// The descent of each place.
+    descents: Descents,
+    /// The task of each place.
+    jobs: Vec<Option<Job>>,
     gradient: Vec<f64>,
-}
-
-/// A place for one task.
-struct Bench {
-    descent: Descent,
-    job: Option<Job>,
 }
 
 /// A task in hand.
@@ -78,18 +78,20 @@ struct Job {
 impl<'a> Worker<'a> {
     /// A worker in a workshop.
     pub fn new(shop: &'a Workshop) -> Self {
-        let benches = (0..LANES)
-            .map(|_| Bench { descent: Descent::new(&shop.region, shop.most_evaluations()), job: None })
-            .collect();
-        let gradient = vec![0.0; shop.structure.n_unknowns()];
-        Worker { shop, evaluator: Evaluator::new(&shop.kernel), benches, gradient }
+        Worker {
+            shop,
+            evaluator: Evaluator::new(&shop.kernel),
+            descents: Descents::new(&shop.region, LANES, shop.most_evaluations()),
+            jobs: (0..LANES).map(|_| None).collect(),
+            gradient: vec![0.0; shop.structure.n_unknowns()],
+        }
     }
 
     /// Works until the queue is closed and empty, or nobody listens.
     pub fn work(&mut self, queue: &Queue, results: &Sender<TaskResult>) {
         let mut taken = Vec::new();
         loop {
-            let n_idle = self.benches.iter().filter(|bench| bench.job.is_none()).count();
+            let n_idle = self.jobs.iter().filter(|job| job.is_none()).count();
             if n_idle > 0 {
                 let clearings = queue.take(n_idle, n_idle == LANES, &mut taken);
                 for task in taken.drain(..) {
@@ -97,17 +99,19 @@ impl<'a> Worker<'a> {
                 }
             }
             let clearings = queue.clearings();
-            for bench in &mut self.benches {
-                bench.job.take_if(|job| job.clearings < clearings);
+            for (place, job) in self.jobs.iter_mut().enumerate() {
+                if job.take_if(|job| job.clearings < clearings).is_some() {
+                    self.descents.leave(place);
+                }
             }
-            if self.benches.iter().all(|bench| bench.job.is_none()) {
+            if self.jobs.iter().all(Option::is_none) {
                 if queue.is_done() {
                     return;
                 }
                 continue;
             }
             self.advance();
-            for place in 0..self.benches.len() {
+            for place in 0..LANES {
                 if let Some(result) = self.harvest(place)
                     && results.send(result).is_err()
                 {
@@ -118,17 +122,17 @@ impl<'a> Worker<'a> {
     }
 
     fn begin(&mut self, task: Task, clearings: u64) {
-        let Some(bench) = self.benches.iter_mut().find(|bench| bench.job.is_none()) else { return };
+        let Some(place) = self.jobs.iter().position(Option::is_none) else { return };
         let shop = self.shop;
         let confirmation = match &task.work {
             Work::Confirm { at, .. } => Some(Confirmation::new(&shop.region, at)),
             Work::Descend { heuristic, proposal, .. } => {
                 let start = make_start(shop, &task, *heuristic, proposal);
-                bench.descent.start(&start);
+                self.descents.start(place, &start);
                 None
             }
         };
-        bench.job = Some(Job {
+        self.jobs[place] = Some(Job {
             task,
             clearings,
             evaluations: 0,
@@ -142,74 +146,60 @@ impl<'a> Worker<'a> {
 
     /// One evaluation, or one matrix, for every task in hand.
     fn advance(&mut self) {
-        let shop = self.shop;
-        let mut asked: Vec<usize> = Vec::with_capacity(LANES);
-        for (place, bench) in self.benches.iter_mut().enumerate() {
-            let Some(job) = &mut bench.job else { continue };
-            let Some(confirmation) = &mut job.confirmation else {
-                asked.push(place);
-                continue;
-            };
-            if confirmation.judgement().is_some() {
-                continue;
-            }
-            match confirmation.ask() {
-                Ask::Gradient(_) => asked.push(place),
-                Ask::Curvature(at) => {
-                    let matrix = self.evaluator.curvature(at);
-                    // A matrix takes one pass for each unknown.
-                    job.evaluations += at.len() as u64;
-                    confirmation.tell_curvature(&matrix);
-                }
+        for job in self.jobs.iter_mut().flatten() {
+            let Some(confirmation) = &mut job.confirmation else { continue };
+            if let (None, Ask::Curvature(at)) = (confirmation.judgement(), confirmation.ask()) {
+                let matrix = self.evaluator.curvature(at);
+                // A matrix takes one pass for each unknown.
+                job.evaluations += at.len() as u64;
+                confirmation.tell_curvature(&matrix);
             }
         }
-        if asked.is_empty() {
-            return;
-        }
-        let benches = &self.benches;
-        let point = |k: usize| {
-            let bench: &Bench = &benches[asked[k]];
-            match bench.job.as_ref().and_then(|job| job.confirmation.as_ref()).map(Confirmation::ask) {
-                Some(Ask::Gradient(at)) => at,
-                _ => bench.descent.ask(),
+        // Free places are taken from the front, so a narrow machine serves while there is little to do.
+        let n_lanes = self.jobs.iter().rposition(Option::is_some).map_or(0, |last| last + 1);
+        self.evaluator.prepare(n_lanes.max(LEAST_LANES));
+        self.descents.ask(self.evaluator.points_mut());
+        for (place, job) in self.jobs.iter().enumerate() {
+            if let Some(Ask::Gradient(at)) = job.as_ref().and_then(Job::asks) {
+                self.evaluator.put(place, at);
             }
-        };
-        self.evaluator.evaluate(asked.len(), point);
-        for (k, &place) in asked.iter().enumerate() {
-            let value = self.evaluator.value(k);
-            self.evaluator.read_gradient(k, &mut self.gradient);
-            let bench = &mut self.benches[place];
-            let Some(job) = &mut bench.job else { continue };
+        }
+        self.evaluator.run();
+        let evaluator = &self.evaluator;
+        self.descents.tell(evaluator.points(), evaluator.values(), evaluator.gradients());
+        for (place, job) in self.jobs.iter_mut().enumerate() {
+            let Some(job) = job else { continue };
+            if job.confirmation.is_some() && !matches!(job.asks(), Some(Ask::Gradient(_))) {
+                continue;
+            }
+            let value = evaluator.values()[place];
             job.evaluations += 1;
             if !value.is_finite() {
                 job.outside += 1;
-                if job.first_outside.is_none() {
-                    job.first_outside = Some(bench.descent.ask().to_vec());
-                }
+                job.first_outside.get_or_insert_with(|| evaluator.point(place));
             }
             match &mut job.confirmation {
-                Some(confirmation) => confirmation.tell_gradient(value, &self.gradient),
-                None => {
-                    if bench.descent.tell(value, &self.gradient) == Progress::Ended {
-                        job.descent_ended(&mut bench.descent, shop);
-                    }
+                Some(confirmation) => {
+                    evaluator.read_gradient(place, &mut self.gradient);
+                    confirmation.tell_gradient(value, &self.gradient);
                 }
+                None if self.descents.has_ended(place) => job.descent_ended(&mut self.descents, place, self.shop),
+                None => {}
             }
         }
     }
 
-    /// The result of a bench whose task has ended.
+    /// The result of a place whose task has ended.
     fn harvest(&mut self, place: usize) -> Option<TaskResult> {
         let shop = self.shop;
-        let bench = &mut self.benches[place];
-        let job = bench.job.as_mut()?;
+        let job = self.jobs[place].as_mut()?;
         let finding = match (&job.task.work, &job.confirmation) {
             (Work::Descend { heuristic, mark, .. }, _) => {
-                if !bench.descent.has_ended() {
+                if !self.descents.has_ended(place) {
                     return None;
                 }
                 let (heuristic, mark) = (*heuristic, *mark);
-                let end = bench.descent.end();
+                let end = self.descents.end(place);
                 let met = |kinked| {
                     let candidate = Candidate::new(&shop.identity, end.value, end.at.clone().into(), kinked);
                     Finding::Met { heuristic, mark, candidate }
@@ -224,12 +214,13 @@ impl<'a> Worker<'a> {
             }
             (Work::Confirm { .. }, None) => {
                 // The descent away from a saddle is under way.
-                if !bench.descent.has_ended() {
+                if !self.descents.has_ended(place) {
                     return None;
                 }
-                let end = bench.descent.end();
+                let end = self.descents.end(place);
                 if end.kind == EndKind::Converged && job.saddles <= MOST_SADDLES {
                     job.confirmation = Some(Confirmation::new(&shop.region, &end.at));
+                    self.descents.leave(place);
                     return None;
                 }
                 Finding::Dismissed { entry: job.entry()? }
@@ -238,7 +229,7 @@ impl<'a> Worker<'a> {
                 Judgement::Failed => Finding::Dismissed { entry: *entry },
                 Judgement::Saddle { escape } => {
                     job.saddles += 1;
-                    bench.descent.start(escape);
+                    self.descents.start(place, escape);
                     job.confirmation = None;
                     return None;
                 }
@@ -260,7 +251,8 @@ impl<'a> Worker<'a> {
                 }
             },
         };
-        let job = bench.job.take()?;
+        let job = self.jobs[place].take()?;
+        self.descents.leave(place);
         Some(TaskResult {
             round: job.task.round,
             number: job.task.number,
@@ -273,6 +265,11 @@ impl<'a> Worker<'a> {
 }
 
 impl Job {
+    /// What its confirmation wants; nothing once it is judged, or while a descent is under way.
+    fn asks(&self) -> Option<Ask<'_>> {
+        self.confirmation.as_ref().filter(|confirmation| confirmation.judgement().is_none()).map(Confirmation::ask)
+    }
+
     fn entry(&self) -> Option<crate::ledger::EntryId> {
         match self.task.work {
             Work::Confirm { entry, .. } => Some(entry),
@@ -281,14 +278,14 @@ impl Job {
     }
 
     /// A cloud that drifted against its box is put back into the middle, and goes on.
-    fn descent_ended(&mut self, descent: &mut Descent, shop: &Workshop) {
-        let end = descent.end();
+    fn descent_ended(&mut self, descents: &mut Descents, place: usize, shop: &Workshop) {
+        let end = descents.end(place);
         if end.kind != EndKind::Converged || self.recentrings >= MOST_RECENTRINGS {
             return;
         }
         if let Some(moved) = shop.region.recentre(&end.at) {
             self.recentrings += 1;
-            descent.start(&moved);
+            descents.start(place, &moved);
         }
     }
 }

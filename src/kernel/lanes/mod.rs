@@ -13,7 +13,9 @@
 //! - `code`: the flat code and how it is made.
 //! - `compound`: innermost loops made faster.
 //! - `run`: the loop over it, in three builds.
+//! - [`algebra`]: vector algebra for descents, over rows like those of a machine.
 
+pub mod algebra;
 mod code;
 mod compound;
 mod run;
