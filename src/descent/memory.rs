@@ -95,9 +95,10 @@ impl Pairs {
 
     /// The memory as the algebra wants it.
     pub fn memory(&mut self) -> Memory<'_> {
+        let per_scale = self.scale.0.map(|scale| 1.0 / scale);
         for (ratio, (inverse, down)) in self.ratios.iter_mut().zip(self.inverses.iter().zip(&self.downs)) {
             for lane in 0..BLOCK {
-                let weight = (down.0[lane] / self.scale.0[lane]) as f32;
+                let weight = (down.0[lane] * per_scale[lane]) as f32;
                 ratio.0[lane] = if inverse.0[lane] == 0.0 { 0.0 } else { weight };
             }
         }

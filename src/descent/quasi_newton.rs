@@ -78,6 +78,8 @@ struct Block {
     /// Steps are multiples of it.
     direction: Vec<Short>,
     work: Vec<Short>,
+    /// 0 where a bound holds the slot, 1 elsewhere; kept up to date while some lane has touched a bound.
+    free: Vec<Short>,
     pairs: Pairs,
 }
 
@@ -167,6 +169,7 @@ impl Block {
             gradient: vec![Lanes::ZERO; n],
             direction: vec![Short::ZERO; length],
             work: vec![Short::ZERO; length],
+            free: vec![Short::ZERO; n],
             pairs: Pairs::new(length),
         }
     }
@@ -252,15 +255,15 @@ impl Block {
         let touched = self.lanes.iter().any(|lane| lane.is_under_way() && lane.touched);
         let bounds = (shared.bounded && touched).then_some(Bounds { lower: &region.lower, upper: &region.upper });
         let reached = Reached { at: &mut self.at, gradient: &mut self.gradient };
-        let pair = Pair { step, change, work: &mut self.work };
+        let pair = Pair { step, change, work: &mut self.work, free: &mut self.free };
         let scales = (&region.scale[..], &shared.inverse_scale[..]);
         let sums = algebra.accept(points, gradients, scales, bounds, how, reached, pair);
         for lane in (0..BLOCK).filter(|&lane| how.taken.0[lane] > 0.0) {
             self.pairs.remember(lane, &sums, how.down.0[lane]);
         }
-        let reached = Reached { at: &mut self.at, gradient: &mut self.gradient };
+        let free = bounds.map(|_| &self.free[..]);
         let (work, direction) = (&mut self.work, &mut self.direction);
-        let directed = algebra.direct(&self.pairs.memory(), reached, bounds, &how.taken, work, direction);
+        let directed = algebra.direct(&self.pairs.memory(), &self.gradient, free, &how.taken, work, direction);
         for lane in (0..BLOCK).filter(|&lane| how.taken.0[lane] > 0.0) {
             let state = &mut self.lanes[lane];
             if sums.steepness.0[lane] == 0.0 {

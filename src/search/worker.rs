@@ -21,6 +21,9 @@ const LANES: usize = 32;
 /// Lanes of the narrowest machine that descents can read.
 const LEAST_LANES: usize = 8;
 
+/// Results held back at most while there is work.
+const MOST_HELD: usize = 8;
+
 /// Times that a cloud at its bounds is brought back to the middle within one descent.
 const MOST_RECENTRINGS: u32 = 3;
 
@@ -58,6 +61,8 @@ pub struct Worker<'a> {
     descents: Descents,
     /// The task of each place.
     jobs: Vec<Option<Job>>,
+    /// How often the queue had been cleared when last looked at.
+    clearings: u64,
     gradient: Vec<f64>,
 }
 
@@ -83,6 +88,7 @@ impl<'a> Worker<'a> {
             evaluator: Evaluator::new(&shop.kernel),
             descents: Descents::new(&shop.region, LANES, shop.most_evaluations()),
             jobs: (0..LANES).map(|_| None).collect(),
+            clearings: 0,
             gradient: vec![0.0; shop.structure.n_unknowns()],
         }
     }
@@ -90,35 +96,54 @@ impl<'a> Worker<'a> {
     /// Works until the queue is closed and empty, or nobody listens.
     pub fn work(&mut self, queue: &Queue, results: &Sender<TaskResult>) {
         let mut taken = Vec::new();
+        let mut finished = Vec::new();
+        let mut n_busy = 0;
         loop {
-            let n_idle = self.jobs.iter().filter(|job| job.is_none()).count();
-            if n_idle > 0 {
-                let clearings = queue.take(n_idle, n_idle == LANES, &mut taken);
+            if n_busy < LANES {
+                if n_busy == 0 && !send(&mut finished, results) {
+                    return;
+                }
+                let clearings = queue.take(LANES - n_busy, n_busy == 0, &mut taken);
+                n_busy += taken.len();
                 for task in taken.drain(..) {
                     self.begin(task, clearings);
                 }
-            }
-            let clearings = queue.clearings();
-            for (place, job) in self.jobs.iter_mut().enumerate() {
-                if job.take_if(|job| job.clearings < clearings).is_some() {
-                    self.descents.leave(place);
+                // A result wakes the thread that merges, which costs more than a hundred evaluations of a small
+                // landscape; but nothing is held back while that thread may have to draw up more.
+                if (n_busy < LANES || finished.len() >= MOST_HELD) && !send(&mut finished, results) {
+                    return;
                 }
             }
-            if self.jobs.iter().all(Option::is_none) {
+            let clearings = queue.clearings();
+            if clearings != self.clearings {
+                self.clearings = clearings;
+                n_busy -= self.drop_cleared();
+            }
+            if n_busy == 0 {
                 if queue.is_done() {
                     return;
                 }
                 continue;
             }
-            self.advance();
-            for place in 0..LANES {
-                if let Some(result) = self.harvest(place)
-                    && results.send(result).is_err()
-                {
-                    return;
-                }
+            let n_ended = self.advance();
+            if n_ended > 0 {
+                let before = finished.len();
+                finished.extend((0..LANES).filter_map(|place| self.harvest(place)));
+                n_busy -= finished.len() - before;
             }
         }
+    }
+
+    /// Drops the tasks that were taken before the queue was last cleared; says how many.
+    fn drop_cleared(&mut self) -> usize {
+        let mut n_dropped = 0;
+        for (place, job) in self.jobs.iter_mut().enumerate() {
+            if job.take_if(|job| job.clearings < self.clearings).is_some() {
+                self.descents.leave(place);
+                n_dropped += 1;
+            }
+        }
+        n_dropped
     }
 
     fn begin(&mut self, task: Task, clearings: u64) {
@@ -144,35 +169,42 @@ impl<'a> Worker<'a> {
         });
     }
 
-    /// One evaluation, or one matrix, for every task in hand.
-    fn advance(&mut self) {
-        for job in self.jobs.iter_mut().flatten() {
+    /// One evaluation, or one matrix, for every task in hand; says how many may have ended.
+    fn advance(&mut self) -> usize {
+        let mut n_ended = 0;
+        let mut n_confirming = 0;
+        let mut n_lanes = LEAST_LANES;
+        for (place, job) in self.jobs.iter_mut().enumerate() {
+            let Some(job) = job else { continue };
+            // Free places are taken from the front, so a narrow machine serves while there is little to do.
+            n_lanes = n_lanes.max(place + 1);
             let Some(confirmation) = &mut job.confirmation else { continue };
-            if let (None, Ask::Curvature(at)) = (confirmation.judgement(), confirmation.ask()) {
+            n_confirming += 1;
+            if let Ask::Curvature(at) = confirmation.ask() {
                 let matrix = self.evaluator.curvature(at);
                 // A matrix takes one pass for each unknown.
                 job.evaluations += at.len() as u64;
                 confirmation.tell_curvature(&matrix);
+                n_ended += usize::from(confirmation.judgement().is_some());
             }
         }
-        // Free places are taken from the front, so a narrow machine serves while there is little to do.
-        let n_lanes = self.jobs.iter().rposition(Option::is_some).map_or(0, |last| last + 1);
-        self.evaluator.prepare(n_lanes.max(LEAST_LANES));
+        self.evaluator.prepare(n_lanes);
         self.descents.ask(self.evaluator.points_mut());
-        for (place, job) in self.jobs.iter().enumerate() {
-            if let Some(Ask::Gradient(at)) = job.as_ref().and_then(Job::asks) {
-                self.evaluator.put(place, at);
+        if n_confirming > 0 {
+            for (place, job) in self.jobs.iter().enumerate() {
+                if let Some(Ask::Gradient(at)) = job.as_ref().and_then(Job::asks) {
+                    self.evaluator.put(place, at);
+                }
             }
         }
         self.evaluator.run();
         let evaluator = &self.evaluator;
         self.descents.tell(evaluator.points(), evaluator.values(), evaluator.gradients());
-        for (place, job) in self.jobs.iter_mut().enumerate() {
+        for (place, (job, &value)) in self.jobs.iter_mut().zip(evaluator.values()).enumerate() {
             let Some(job) = job else { continue };
             if job.confirmation.is_some() && !matches!(job.asks(), Some(Ask::Gradient(_))) {
                 continue;
             }
-            let value = evaluator.values()[place];
             job.evaluations += 1;
             if !value.is_finite() {
                 job.outside += 1;
@@ -182,11 +214,16 @@ impl<'a> Worker<'a> {
                 Some(confirmation) => {
                     evaluator.read_gradient(place, &mut self.gradient);
                     confirmation.tell_gradient(value, &self.gradient);
+                    n_ended += usize::from(confirmation.judgement().is_some());
                 }
-                None if self.descents.has_ended(place) => job.descent_ended(&mut self.descents, place, self.shop),
+                None if self.descents.has_ended(place) => {
+                    job.descent_ended(&mut self.descents, place, self.shop);
+                    n_ended += 1;
+                }
                 None => {}
             }
         }
+        n_ended
     }
 
     /// The result of a place whose task has ended.
@@ -262,6 +299,11 @@ impl<'a> Worker<'a> {
             finding,
         })
     }
+}
+
+/// Sends all results; `false` when nobody listens.
+fn send(finished: &mut Vec<TaskResult>, results: &Sender<TaskResult>) -> bool {
+    finished.drain(..).all(|result| results.send(result).is_ok())
 }
 
 impl Job {

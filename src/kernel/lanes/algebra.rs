@@ -99,6 +99,8 @@ pub struct Pair<'a> {
     pub change: &'a mut [Short],
     /// The new gradient, measured by its size, without what bounds hold.
     pub work: &'a mut [Short],
+    /// With bounds: 0 where one holds the slot, 1 elsewhere.
+    pub free: &'a mut [Short],
 }
 
 /// What [`Algebra::accept`] sums up.
@@ -146,7 +148,7 @@ pub struct Proposed {
 /// The algebra in one build.
 #[derive(Clone, Copy, Debug)]
 pub struct Algebra {
-    build: Build,
+    pub(super) build: Build,
 }
 
 impl Algebra {
@@ -200,6 +202,7 @@ macro_rules! in_each_build {
         }
     };
 }
+pub(super) use in_each_build;
 
 /// An array, lane by lane.
 macro_rules! each {
@@ -275,6 +278,7 @@ fn accept_here<const HOLD: bool>(
     let Acceptance { taken: Lanes(taken), down: Lanes(down), unit: Lanes(unit) } = *how;
     let (mut curvature, mut square, mut length) = ([0.0_f32; BLOCK], [0.0_f32; BLOCK], [0.0_f32; BLOCK]);
     let mut steepness = [0.0; BLOCK];
+    let free = pair.free;
     let (work, padding) = pair.work.split_at_mut(scale.len());
     padding.fill(Short::ZERO);
     let vectors = reached.at.iter_mut().zip(reached.gradient);
@@ -283,7 +287,8 @@ fn accept_here<const HOLD: bool>(
     for (slot, (((at, gradient), ((step, change), work)), (&scale, &inverse))) in
         vectors.zip(pairs).zip(scales).enumerate()
     {
-        let (point, raw) = (points.row(slot), gradients.row(slot));
+        // Copied before anything is chosen from them: a choice between two places in memory would go lane by lane.
+        let (point, raw) = (*points.row(slot), *gradients.row(slot));
         let (before, slope) = (at.0, gradient.0);
         let g: [f64; BLOCK] = each!(lane => raw[lane] * scale);
         let x: [f64; BLOCK] = each!(lane => if taken[lane] > 0.0 { point[lane] } else { before[lane] });
@@ -298,15 +303,18 @@ fn accept_here<const HOLD: bool>(
         curvature = each!(lane => curvature[lane] + moved[lane] * changed[lane]);
         square = each!(lane => square[lane] + changed[lane] * changed[lane]);
         length = each!(lane => length[lane] + moved[lane] * moved[lane]);
-        let free: [f64; BLOCK] = if HOLD {
+        let mut moving = g;
+        if HOLD {
             let (lower, upper) = (bounds.lower[slot], bounds.upper[slot]);
-            each!(lane => if (x[lane] <= lower) & (g[lane] >= 0.0) | (x[lane] >= upper) & (g[lane] <= 0.0) { 0.0 } else { g[lane] })
-        } else {
-            g
-        };
-        let size: [f64; BLOCK] = each!(lane => free[lane].abs());
+            let held: [bool; BLOCK] =
+                each!(lane => (x[lane] <= lower) & (g[lane] >= 0.0) | (x[lane] >= upper) & (g[lane] <= 0.0));
+            let share: [f64; BLOCK] = each!(lane => if held[lane] { 0.0 } else { 1.0 });
+            moving = each!(lane => g[lane] * share[lane]);
+            free[slot].0 = each!(lane => share[lane] as f32);
+        }
+        let size: [f64; BLOCK] = each!(lane => moving[lane].abs());
         steepness = each!(lane => if size[lane] > steepness[lane] { size[lane] } else { steepness[lane] });
-        work.0 = each!(lane => (free[lane] * unit[lane]) as f32);
+        work.0 = each!(lane => (moving[lane] * unit[lane]) as f32);
     }
     Summed { curvature: Short(curvature), square: Short(square), length: Short(length), steepness: Lanes(steepness) }
 }
@@ -316,16 +324,16 @@ in_each_build! {
     /// two-loop recursion (Nocedal 1980). Lanes that accepted get it as their direction, 0 where a bound holds.
     direct(
         memory: &Memory<'_>,
-        reached: Reached<'_>,
-        bounds: Option<Bounds<'_>>,
+        gradient: &[Lanes],
+        free: Option<&[Short]>,
         taken: &Lanes,
         work: &mut [Short],
         direction: &mut [Short],
     ) -> Directed {
         recurse(memory, work);
-        match bounds {
-            Some(bounds) => finish::<true>(reached, bounds, taken, work, direction),
-            None => finish::<false>(reached, Bounds { lower: &[], upper: &[] }, taken, work, direction),
+        match free {
+            Some(free) => finish::<true>(gradient, free, taken, work, direction),
+            None => finish::<false>(gradient, &[], taken, work, direction),
         }
     }
 }
@@ -388,31 +396,28 @@ fn add_and_multiply(work: &mut [Short], factor: [f32; BLOCK], added: &[Short], o
 
 #[inline(always)]
 fn finish<const HOLD: bool>(
-    reached: Reached<'_>,
-    bounds: Bounds<'_>,
+    gradient: &[Lanes],
+    free: &[Short],
     taken: &Lanes,
     work: &[Short],
     direction: &mut [Short],
 ) -> Directed {
-    let (mut slope, mut largest) = ([0.0; BLOCK], [0.0; BLOCK]);
-    let vectors = reached.at.iter().zip(reached.gradient.iter());
-    for (slot, (((at, gradient), work), direction)) in vectors.zip(work).zip(direction).enumerate() {
-        let (x, g) = (at.0, gradient.0);
-        let along: [f64; BLOCK] = each!(lane => f64::from(work.0[lane]));
-        let along: [f64; BLOCK] = if HOLD {
-            let (lower, upper) = (bounds.lower[slot], bounds.upper[slot]);
-            each!(lane => if (x[lane] <= lower) & (g[lane] >= 0.0) | (x[lane] >= upper) & (g[lane] <= 0.0) { 0.0 } else { along[lane] })
-        } else {
-            along
-        };
-        slope = each!(lane => slope[lane] + g[lane] * along[lane]);
-        let size: [f64; BLOCK] = each!(lane => along[lane].abs());
+    let (mut slope, mut largest) = ([0.0; BLOCK], [0.0_f32; BLOCK]);
+    let taken: [f32; BLOCK] = each!(lane => taken.0[lane] as f32);
+    for (slot, ((gradient, work), direction)) in gradient.iter().zip(work).zip(direction).enumerate() {
+        let (g, old) = (gradient.0, direction.0);
+        let mut along = work.0;
+        if HOLD {
+            let share = free[slot].0;
+            along = each!(lane => along[lane] * share[lane]);
+        }
+        let size: [f32; BLOCK] = each!(lane => along[lane].abs());
         largest = each!(lane => if size[lane] > largest[lane] { size[lane] } else { largest[lane] });
-        let old: [f64; BLOCK] = each!(lane => f64::from(direction.0[lane]));
-        let new: [f64; BLOCK] = each!(lane => if taken.0[lane] > 0.0 { along[lane] } else { old[lane] });
-        direction.0 = each!(lane => new[lane] as f32);
+        direction.0 = each!(lane => if taken[lane] > 0.0 { along[lane] } else { old[lane] });
+        let along: [f64; BLOCK] = each!(lane => f64::from(along[lane]));
+        slope = each!(lane => slope[lane] + g[lane] * along[lane]);
     }
-    Directed { slope: Lanes(slope), largest: Lanes(largest) }
+    Directed { slope: Lanes(slope), largest: Lanes(each!(lane => f64::from(largest[lane]))) }
 }
 
 in_each_build! {

@@ -14,10 +14,12 @@
 //! - `compound`: innermost loops made faster.
 //! - `run`: the loop over it, in three builds.
 //! - [`algebra`]: vector algebra for descents, over rows like those of a machine.
+//! - [`dense`]: symmetric matrices, for the spectra of confirmations.
 
 pub mod algebra;
 mod code;
 mod compound;
+pub mod dense;
 mod run;
 
 use std::sync::Arc;
