@@ -8,6 +8,9 @@ pub const FIRST: f64 = 0.01;
 const ENOUGH: f64 = 1e-4;
 /// Values that differ by less than this, relative to the larger, differ by rounding.
 const ROUNDING: f64 = 1e-13;
+/// How many times the promised decrease an outlook allows for, and the evaluations before which nothing is promised.
+const OUTLOOK: f64 = 16.0;
+const OUTLOOK_FROM: u64 = 3;
 /// Trials along one direction before it is given up.
 const MOST_TRIALS: u32 = 24;
 
@@ -81,9 +84,11 @@ pub struct Lane {
     trials: u32,
     /// The trial was cut at a bound.
     pub cut: bool,
-    /// A bound has been touched since the start, so that slots may have to be held.
-    pub touched: bool,
+    /// A slot of the trial stands at a bound, so that it may have to be held.
+    pub touches: bool,
     steepest: bool,
+    /// How much lower the curvature met so far promises to lead.
+    promised: Option<f64>,
 }
 
 impl Lane {
@@ -100,8 +105,9 @@ impl Lane {
             reach: 0.0,
             trials: 0,
             cut: false,
-            touched: false,
+            touches: false,
             steepest: true,
+            promised: None,
         }
     }
 
@@ -145,7 +151,19 @@ impl Lane {
             // A start that is a minimum already: what is left to go is rounding.
             return self.end(EndKind::Converged);
         }
+        if self.steepest {
+            // The parabola knows the curvature, of which the first step knew nothing: a start next to a minimum is there
+            // at once.
+            self.promised = Some(-0.5 * slope * factor);
+            return self.shorten(factor.clamp(1e-6, 0.5), most);
+        }
         self.shorten(factor.clamp(0.1, 0.5), most)
+    }
+
+    /// The value that it may still reach, generously: where it stands, less several times what the curvature met so far
+    /// promises. Minus infinity while little is known.
+    pub fn outlook(&self) -> f64 {
+        self.promised.map_or(f64::NEG_INFINITY, |promised| self.value - OUTLOOK * promised)
     }
 
     /// Whether the values differ by rounding while the slope along the step has fallen well.
@@ -184,6 +202,8 @@ impl Lane {
         if !(self.slope < 0.0) || !self.reach.is_finite() {
             return if steepest { self.end(EndKind::Stalled) } else { Step::Restart };
         }
+        let known = !steepest && self.evaluations >= OUTLOOK_FROM;
+        self.promised = known.then_some(-0.5 * self.slope);
         let rounding = -self.slope <= ROUNDING * self.value.abs();
         if !steepest && (self.reach < 1e-9 || self.reach < 1e-7 && rounding) {
             return self.end(EndKind::Converged);

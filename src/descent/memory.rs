@@ -2,13 +2,16 @@
 //! 1980).
 //!
 //! All lanes of a block share the place of the newest pair, which moves on with every evaluation. A lane whose trial was
-//! refused leaves its pair void, so its memory is of the last evaluations rather than of the last steps; with seven
-//! places that takes fewer evaluations than five pairs of the usual kind.
+//! refused leaves its pair void, so its memory is of the last evaluations rather than of the last steps; with two
+//! places more that takes fewer evaluations than the usual kind.
 
 use crate::kernel::lanes::algebra::{BLOCK, Lanes, Memory, Short, Summed};
 
-/// Pairs remembered.
-const PAIRS: usize = 7;
+/// Pairs remembered, times unknowns: what a step may cost. In few unknowns more pairs are as cheap, and where stiff walls
+/// and soft bends meet (a chain of ten bends) they save seven evaluations of eight.
+const SIZE: usize = 240;
+/// The fewest and the most pairs.
+const PAIRS: (usize, usize) = (7, 20);
 
 /// A pair is void unless its curvature is safely positive: the cosine between step and change.
 const LEAST_COSINE: f32 = 1e-6;
@@ -20,27 +23,26 @@ pub struct Pairs {
     steps: Vec<Short>,
     changes: Vec<Short>,
     /// `1 / (step . change)` of each pair; 0 where it is void.
-    inverses: [Short; PAIRS],
+    inverses: Vec<Short>,
     /// What the change of each pair was multiplied by.
-    downs: [Lanes; PAIRS],
+    downs: Vec<Lanes>,
     newest: usize,
     /// `(step . change) / (change . change)` of the newest pair that is not void: the scale of the inverse curvature.
     scale: Lanes,
-    ratios: [Short; PAIRS],
 }
 
 impl Pairs {
     /// An empty memory for vectors of so many rows.
     pub fn new(length: usize) -> Self {
+        let n_pairs = (SIZE / length.max(1)).clamp(PAIRS.0, PAIRS.1);
         Pairs {
             length,
-            steps: vec![Short::ZERO; PAIRS * length],
-            changes: vec![Short::ZERO; PAIRS * length],
-            inverses: [Short::ZERO; PAIRS],
-            downs: [Lanes::ZERO; PAIRS],
+            steps: vec![Short::ZERO; n_pairs * length],
+            changes: vec![Short::ZERO; n_pairs * length],
+            inverses: vec![Short::ZERO; n_pairs],
+            downs: vec![Lanes::ZERO; n_pairs],
             newest: 0,
             scale: Lanes([1.0; BLOCK]),
-            ratios: [Short::ZERO; PAIRS],
         }
     }
 
@@ -48,6 +50,8 @@ impl Pairs {
     pub fn clear(&mut self, lane: usize) {
         self.steps.iter_mut().chain(&mut self.changes).for_each(|row| row.0[lane] = 0.0);
         self.inverses.iter_mut().for_each(|inverse| inverse.0[lane] = 0.0);
+        self.downs.iter_mut().for_each(|down| down.0[lane] = 0.0);
+        self.scale.0[lane] = 1.0;
     }
 
     /// Whether nothing is remembered about a lane.
@@ -62,8 +66,9 @@ impl Pairs {
 
     /// Moves on by one place, where all pairs are void; gives it to be filled.
     pub fn advance(&mut self) -> (&mut [Short], &mut [Short]) {
-        self.newest = (self.newest + 1) % PAIRS;
+        self.newest = (self.newest + 1) % self.inverses.len();
         self.inverses[self.newest] = Short::ZERO;
+        self.downs[self.newest] = Lanes::ZERO;
         let rows = self.newest * self.length..(self.newest + 1) * self.length;
         (&mut self.steps[rows.clone()], &mut self.changes[rows])
     }
@@ -94,19 +99,13 @@ impl Pairs {
     }
 
     /// The memory as the algebra wants it.
-    pub fn memory(&mut self) -> Memory<'_> {
-        let per_scale = self.scale.0.map(|scale| 1.0 / scale);
-        for (ratio, (inverse, down)) in self.ratios.iter_mut().zip(self.inverses.iter().zip(&self.downs)) {
-            for lane in 0..BLOCK {
-                let weight = (down.0[lane] * per_scale[lane]) as f32;
-                ratio.0[lane] = if inverse.0[lane] == 0.0 { 0.0 } else { weight };
-            }
-        }
+    pub fn memory(&self) -> Memory<'_> {
         Memory {
             steps: &self.steps,
             changes: &self.changes,
             inverses: &self.inverses,
-            ratios: &self.ratios,
+            downs: &self.downs,
+            per_scale: Lanes(self.scale.0.map(|scale| 1.0 / scale)),
             newest: self.newest,
         }
     }

@@ -78,7 +78,7 @@ struct Block {
     /// Steps are multiples of it.
     direction: Vec<Short>,
     work: Vec<Short>,
-    /// 0 where a bound holds the slot, 1 elsewhere; kept up to date while some lane has touched a bound.
+    /// 0 where a bound holds the slot, 1 elsewhere; as of the last step that touched a bound.
     free: Vec<Short>,
     pairs: Pairs,
 }
@@ -142,6 +142,12 @@ impl Descents {
         self.lane(lane).evaluations
     }
 
+    /// The value that a descent may still reach, generously: where it stands, less several times what the curvature met so
+    /// far promises. Minus infinity while little is known.
+    pub fn outlook(&self, lane: usize) -> f64 {
+        self.lane(lane).outlook()
+    }
+
     /// The end; of one that has not ended, as if its evaluations were spent.
     pub fn end(&self, lane: usize) -> End {
         let block = &self.blocks[lane / BLOCK];
@@ -199,7 +205,7 @@ impl Block {
         let met = shared.algebra.propose(at, direction, &region.scale, bounds, &reach, &under_way, points);
         for (lane, state) in self.lanes.iter_mut().enumerate() {
             state.cut = met.cut.0[lane] > 0.0;
-            state.touched |= met.touched.0[lane] > 0.0;
+            state.touches = met.touched.0[lane] > 0.0;
         }
     }
 
@@ -252,19 +258,20 @@ impl Block {
             self.pairs.leave_void();
             return;
         }
-        let touched = self.lanes.iter().any(|lane| lane.is_under_way() && lane.touched);
-        let bounds = (shared.bounded && touched).then_some(Bounds { lower: &region.lower, upper: &region.upper });
+        let taken = |lane: usize| how.taken.0[lane] > 0.0;
+        let touches = (0..BLOCK).any(|lane| taken(lane) && self.lanes[lane].touches);
+        let bounds = (shared.bounded && touches).then_some(Bounds { lower: &region.lower, upper: &region.upper });
         let reached = Reached { at: &mut self.at, gradient: &mut self.gradient };
         let pair = Pair { step, change, work: &mut self.work, free: &mut self.free };
         let scales = (&region.scale[..], &shared.inverse_scale[..]);
         let sums = algebra.accept(points, gradients, scales, bounds, how, reached, pair);
-        for lane in (0..BLOCK).filter(|&lane| how.taken.0[lane] > 0.0) {
+        for lane in (0..BLOCK).filter(|&lane| taken(lane)) {
             self.pairs.remember(lane, &sums, how.down.0[lane]);
         }
         let free = bounds.map(|_| &self.free[..]);
         let (work, direction) = (&mut self.work, &mut self.direction);
         let directed = algebra.direct(&self.pairs.memory(), &self.gradient, free, &how.taken, work, direction);
-        for lane in (0..BLOCK).filter(|&lane| how.taken.0[lane] > 0.0) {
+        for lane in (0..BLOCK).filter(|&lane| taken(lane)) {
             let state = &mut self.lanes[lane];
             if sums.steepness.0[lane] == 0.0 {
                 state.end(EndKind::Converged);

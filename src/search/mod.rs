@@ -9,11 +9,18 @@
 //! start, lets `descent` ask and `evaluate` answer, many tasks in lanes at once; the hunt merges the results into the
 //! ledger and tells the heuristic that proposed.
 
-pub mod chain;
+pub mod anneal;
 pub mod crew;
+pub mod earnings;
+pub mod evolve;
+pub mod geometry;
+pub mod hop;
 mod hunt;
 pub mod moves;
+pub mod multistart;
 pub mod outcome;
+pub mod portfolio;
+pub mod proposer;
 pub mod schedule;
 pub mod settings;
 pub mod start;

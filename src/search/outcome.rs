@@ -55,6 +55,8 @@ pub struct Troubles {
     pub out_of_budget: u64,
     /// Descents that stalled before the gradient vanished.
     pub stalled: u64,
+    /// Descents that their heuristic gave up because no useful value was in sight; no trouble, but no minimum either.
+    pub abandoned: u64,
     /// Converged points whose polish failed.
     pub not_confirmed: u64,
     /// Converged points that proved to be saddles, from which the descent went on.
@@ -70,6 +72,7 @@ impl Troubles {
             Lost::Outside => self.starts_outside += 1,
             Lost::OutOfBudget => self.out_of_budget += 1,
             Lost::Stalled => self.stalled += 1,
+            Lost::Abandoned => self.abandoned += 1,
         }
     }
 }

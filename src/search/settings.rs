@@ -11,16 +11,27 @@ pub enum Heuristic {
     Survey,
     /// Uniform and low-discrepancy starts.
     Multistart,
+    /// Chains that accept rises by temperature and cool, each closed by a descent.
+    Anneal,
+    /// A population of minima whose children descend.
+    Evolve,
     /// Perturb a minimum, descend, accept by temperature.
     Hop,
 }
 
 impl Heuristic {
     /// Every one, in the order of its number.
-    pub const ALL: [Heuristic; 4] = [Heuristic::Given, Heuristic::Survey, Heuristic::Multistart, Heuristic::Hop];
+    pub const ALL: [Heuristic; 6] = [
+        Heuristic::Given,
+        Heuristic::Survey,
+        Heuristic::Multistart,
+        Heuristic::Anneal,
+        Heuristic::Evolve,
+        Heuristic::Hop,
+    ];
 
     /// Those that a mix may name.
-    pub const MEMBERS: [Heuristic; 2] = [Heuristic::Multistart, Heuristic::Hop];
+    pub const MEMBERS: [Heuristic; 4] = [Heuristic::Multistart, Heuristic::Anneal, Heuristic::Evolve, Heuristic::Hop];
 
     /// The name on the command line and in files.
     pub fn name(self) -> &'static str {
@@ -28,6 +39,8 @@ impl Heuristic {
             Heuristic::Given => "given",
             Heuristic::Survey => "survey",
             Heuristic::Multistart => "multistart",
+            Heuristic::Anneal => "anneal",
+            Heuristic::Evolve => "evolve",
             Heuristic::Hop => "hop",
         }
     }
@@ -47,6 +60,7 @@ impl Heuristic {
 #[derive(Clone, Debug, PartialEq)]
 pub struct Mix {
     members: Vec<(Heuristic, f64)>,
+    fixed: bool,
 }
 
 /// Why a mix was refused.
@@ -77,12 +91,14 @@ impl fmt::Display for MixError {
 impl std::error::Error for MixError {}
 
 impl Mix {
-    /// Reads `multistart,hop` or `hop:0.7,multistart:0.3`. Shares without a number are equal; all are scaled to sum 1.
+    /// Reads `multistart,hop` or `hop:0.7,multistart:0.3`. Without any number the shares follow what the members earn,
+    /// and begin equal; with one they stay as they are given, a missing one being 1. All are scaled to sum 1.
     ///
     /// ```
     /// use thalweg::search::{Heuristic, Mix};
     /// let mix = Mix::read("hop:3,multistart").unwrap();
-    /// assert_eq!(mix.members(), [(Heuristic::Hop, 0.75), (Heuristic::Multistart, 0.25)]);
+    /// assert_eq!(mix.members(), [(Heuristic::Hop, 0.85), (Heuristic::Multistart, 0.25)]);
+    /// assert!(mix.is_fixed() && !Mix::read("hop,evolve").unwrap().is_fixed());
     /// assert!(Mix::read("jump").is_err());
     /// ```
     ///
@@ -90,10 +106,12 @@ impl Mix {
     /// A [`MixError`] for an unknown or repeated name, an empty list, or a share that is not a positive number.
     pub fn read(text: &str) -> Result<Mix, MixError> {
         let mut members: Vec<(Heuristic, f64)> = Vec::new();
+        let mut fixed = false;
         for part in text.split(',').map(str::trim).filter(|part| !part.is_empty()) {
             let (name, share) = match part.split_once(':') {
                 None => (part, 1.0),
                 Some((name, share)) => {
+                    fixed = true;
                     let number = share.trim().parse().ok().filter(|&number: &f64| number > 0.0 && number.is_finite());
                     (name.trim(), number.ok_or_else(|| MixError::BadShare(share.trim().to_string()))?)
                 }
@@ -109,19 +127,30 @@ impl Mix {
             return Err(MixError::Empty);
         }
         members.iter_mut().for_each(|member| member.1 /= total);
-        Ok(Mix { members })
+        Ok(Mix { members, fixed })
     }
 
-    /// The members with their shares, which sum to 1.
+    /// Whether the shares stay as they are.
+    pub fn is_fixed(&self) -> bool {
+        self.fixed
+    }
+
+    /// The members with their shares at the beginning, which sum to 1.
     pub fn members(&self) -> &[(Heuristic, f64)] {
         &self.members
     }
 }
 
 impl Default for Mix {
-    /// Mostly `hop`; `multistart` beside it, because it alone is not led by what was met before.
+    /// All four, mostly `hop` at the beginning; then what they earn decides.
     fn default() -> Self {
-        Mix { members: vec![(Heuristic::Hop, 0.85), (Heuristic::Multistart, 0.15)] }
+        let members = vec![
+            (Heuristic::Multistart, 0.03),
+            (Heuristic::Anneal, 0.02),
+            (Heuristic::Evolve, 0.1),
+            (Heuristic::Hop, 0.79),
+        ];
+        Mix { members, fixed: false }
     }
 }
 

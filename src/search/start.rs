@@ -2,7 +2,43 @@
 
 use rand::{Rng, RngExt};
 
-use super::structure::{Cloud, Structure};
+use crate::base::random::{Purpose, stream};
+
+use super::anneal::Annealing;
+use super::moves;
+use super::settings::Heuristic;
+use super::structure::Structure;
+use super::task::{Proposal, Task};
+
+/// Where a task begins.
+pub enum Beginning {
+    /// A descent from here.
+    Descent(Vec<f64>),
+    /// An annealing chain, then a descent from where it ends.
+    Chain(Box<Annealing>),
+}
+
+/// The beginning of a task, from its own random stream.
+pub fn begin(structure: &Structure, seed: u64, task: &Task, heuristic: Heuristic, proposal: &Proposal) -> Beginning {
+    let purpose = if heuristic == Heuristic::Survey { Purpose::Survey } else { Purpose::Task };
+    let mut rng = stream(seed, task.round, task.number, purpose);
+    Beginning::Descent(match proposal {
+        Proposal::Point(at) => at.to_vec(),
+        Proposal::Uniform => uniform(structure, &mut rng),
+        Proposal::Spread(number) => {
+            // The same offsets for all points of the sequence.
+            let mut offsets = stream(seed, u64::MAX, 0, Purpose::Task);
+            spread(structure, *number, &mut offsets, &mut rng)
+        }
+        Proposal::Moved { from, kind, step } => kind.apply(structure, from, *step, &mut rng),
+        Proposal::Symmetric { model } => moves::symmetric_start(structure, model.as_deref(), &mut rng),
+        Proposal::Spliced { mother, father } => moves::splice(structure, mother, father, &mut rng),
+        Proposal::Annealed { from, evaluations } => {
+            let at = from.as_ref().map_or_else(|| uniform(structure, &mut rng), |from| from.to_vec());
+            return Beginning::Chain(Box::new(Annealing::new(structure, at, *evaluations, rng)));
+        }
+    })
+}
 
 /// A point drawn uniformly from the start region.
 pub fn uniform(structure: &Structure, rng: &mut impl Rng) -> Vec<f64> {
@@ -49,22 +85,9 @@ fn golden(n: usize) -> f64 {
     x
 }
 
-/// Moves the rows of a cloud so that their centroid stands in the middle of the start region.
-pub fn centre(structure: &Structure, cloud: &Cloud, at: &mut [f64]) {
-    for k in 0..cloud.dimensions {
-        let slots = || cloud.rows.iter().map(|row| row[k]);
-        let n_rows = cloud.rows.len() as f64;
-        let mean = slots().map(|slot| at[slot]).sum::<f64>() / n_rows;
-        let middle =
-            slots().map(|slot| 0.5 * (structure.start_lower[slot] + structure.start_upper[slot])).sum::<f64>() / n_rows;
-        slots().for_each(|slot| at[slot] += middle - mean);
-    }
-}
-
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::base::random::{Purpose, stream};
 
     fn square(n: usize) -> Structure {
         Structure {

@@ -9,36 +9,42 @@ use std::sync::Arc;
 use crate::base::random::{Purpose, stream};
 use crate::ledger::{EntryId, Identity, Ledger, Meeting};
 
-use super::chain::Chains;
 use super::outcome::{Ending, Troubles};
+use super::portfolio::Portfolio;
+use super::proposer::{Arrival, Place, Scene};
 use super::schedule::Schedule;
 use super::settings::{Heuristic, Settings};
 use super::structure::Structure;
 use super::task::{Finding, Proposal, Task, TaskResult, Work};
 
-/// Tasks of the first rounds. Small, so that chains get deep early; the rounds grow with the evaluations spent, since
-/// many threads need many tasks and by then depth is cheap.
-const FIRST_ROUND: f64 = 16.0;
-/// The evaluations after which a round has doubled, quadrupled at three times more, and so on (square-root growth).
-const GROWTH: f64 = 100_000.0;
+/// Tasks of the first rounds. Small, so that walks get deep early; the rounds grow with the evaluations spent, since many
+/// threads need many tasks and by then depth is cheap.
+const FIRST_ROUND: f64 = 4.0;
+/// A round spends about this part of the evaluations so far.
+const ROUND_SHARE: f64 = 0.01;
 /// The most tasks of a round.
-const LARGEST_ROUND: f64 = 1024.0;
+const LARGEST_ROUND: f64 = 2048.0;
+
+/// What the lowest value so far is worth when it is new; a new minimum with k lower ones is worth 1/(1 + k).
+const WORTH_LOWEST: f64 = 5.0;
+/// Lower minima that are counted for that.
+const RANKED: usize = 200;
 
 /// The share of evaluations that confirmations may take while the hunt goes on; the rest waits for the closing.
-const CONFIRMING_SHARE: f64 = 0.25;
+const CONFIRMING_SHARE: f64 = 0.05;
 
 /// A hunt between two rounds.
 pub struct Hunt {
     settings: Settings,
     structure: Arc<Structure>,
     ledger: Ledger,
-    schedule: Schedule,
-    chains: Chains,
+    portfolio: Portfolio,
+    /// The entries in the order in which they were met.
+    met: Vec<EntryId>,
     troubles: Troubles,
     confirming: u64,
     asked_to_confirm: BTreeSet<EntryId>,
     given_drawn: usize,
-    spread_drawn: u64,
     rounds_merged: u64,
 }
 
@@ -47,13 +53,12 @@ impl Hunt {
     pub fn new(settings: Settings, structure: Arc<Structure>, identity: Arc<Identity>, value_scale: f64) -> Self {
         Hunt {
             ledger: Ledger::new(identity, value_scale),
-            schedule: Schedule::new(&settings.mix, settings.survey),
-            chains: Chains::new(&structure),
+            portfolio: Portfolio::new(&settings.mix, settings.survey, &structure),
+            met: Vec::new(),
             troubles: Troubles::default(),
             confirming: 0,
             asked_to_confirm: BTreeSet::new(),
             given_drawn: 0,
-            spread_drawn: 0,
             rounds_merged: 0,
             settings,
             structure,
@@ -67,25 +72,12 @@ impl Hunt {
         let size = self.round_size();
         self.draw_given(size, &mut work);
         self.draw_confirmations(&mut work);
-        let mut hops = 0;
+        let mut turns = [0; Heuristic::ALL.len()];
         let mut rng = stream(self.settings.seed, round, 0, Purpose::Round);
+        self.portfolio.begin_round();
         while work.len() < size && (work.is_empty() || self.has_room()) {
-            let heuristic = self.schedule.next();
-            self.schedule.begin(heuristic);
-            let (proposal, mark) = match heuristic {
-                Heuristic::Multistart => {
-                    // Every other start is spread evenly; the rest are independent of each other.
-                    self.spread_drawn += 1;
-                    let number = self.spread_drawn;
-                    (if number.is_multiple_of(2) { Proposal::Spread(number / 2) } else { Proposal::Uniform }, 0)
-                }
-                Heuristic::Hop => {
-                    hops += 1;
-                    self.chains.propose(round, hops - 1, &self.ledger, &mut rng)
-                }
-                Heuristic::Survey | Heuristic::Given => (Proposal::Uniform, 0),
-            };
-            work.push(Work::Descend { heuristic, proposal, mark });
+            let scene = Scene { structure: &self.structure, ledger: &self.ledger, met: &self.met, round };
+            work.push(self.portfolio.propose(&scene, &mut turns, &mut rng));
         }
         work.into_iter().enumerate().map(|(number, work)| Task { round, number: number as u64, work }).collect()
     }
@@ -114,27 +106,22 @@ impl Hunt {
                 self.troubles.first_outside = result.first_outside;
             }
             let (round, number) = (result.round, result.number);
+            let result_key = (round, number);
+            self.portfolio.count_fillings(result.fillings);
             match result.finding {
                 Finding::Met { heuristic, mark, candidate } => {
-                    self.schedule.end(heuristic, result.evaluations);
-                    let meeting =
-                        Meeting { heuristic: heuristic.number(), round, task: number, evaluation: self.evaluations() };
-                    let (value, at) = (candidate.value, candidate.at.clone());
+                    let evaluation = self.evaluations() + result.evaluations;
+                    let meeting = Meeting { heuristic: heuristic.number(), round, task: number, evaluation };
                     let met = self.ledger.meet(candidate, meeting);
                     if met.new {
-                        self.chains.met_new(met.entry);
+                        self.met.push(met.entry);
                     }
-                    if heuristic == Heuristic::Hop {
-                        let mut rng = stream(self.settings.seed, round, number + 1, Purpose::Round);
-                        self.chains.arrive(mark, value, &at, met.entry, &mut rng);
-                    }
+                    let worth = if met.new { self.worth(met.entry) } else { 0.0 };
+                    self.arrive(heuristic, mark, Some(met.entry), worth, &result_key, result.evaluations);
                 }
                 Finding::Lost { heuristic, mark, reason } => {
-                    self.schedule.end(heuristic, result.evaluations);
                     self.troubles.count(reason);
-                    if heuristic == Heuristic::Hop {
-                        self.chains.fail(mark);
-                    }
+                    self.arrive(heuristic, mark, None, 0.0, &result_key, result.evaluations);
                 }
                 Finding::Confirmed { entry, confirmed, saddles } => {
                     self.confirming += result.evaluations;
@@ -153,6 +140,32 @@ impl Hunt {
         }
     }
 
+    fn arrive(
+        &mut self,
+        heuristic: Heuristic,
+        mark: u64,
+        entry: Option<EntryId>,
+        worth: f64,
+        &(round, number): &(u64, u64),
+        evaluations: u64,
+    ) {
+        let mut rng = stream(self.settings.seed, round, number + 1, Purpose::Round);
+        let scene = Scene { structure: &self.structure, ledger: &self.ledger, met: &self.met, round };
+        let place: Option<Place> = entry.and_then(|entry| scene.place(entry));
+        self.portfolio.arrive(heuristic, &scene, Arrival { mark, place, evaluations, worth }, &mut rng);
+    }
+
+    /// What a new entry is worth to the heuristic that met it.
+    fn worth(&self, entry: EntryId) -> f64 {
+        let Some(value) = self.ledger.entry(entry).map(|entry| entry.value()) else { return 0.0 };
+        let lower = self.ledger.entries().take(RANKED).take_while(|other| other.value() < value).count();
+        match lower {
+            0 => WORTH_LOWEST,
+            RANKED => 1.0 / self.ledger.len() as f64,
+            lower => 1.0 / (1 + lower) as f64,
+        }
+    }
+
     /// Confirmations of the lowest entries that still wait, `most` at most: the closing of a hunt.
     pub fn draw_closing(&mut self, round: u64, most: usize) -> Vec<Task> {
         let waiting: Vec<EntryId> = self.ledger.unconfirmed(most);
@@ -165,7 +178,7 @@ impl Hunt {
 
     /// Evaluations so far, confirmations included.
     pub fn evaluations(&self) -> u64 {
-        self.schedule.spent().iter().sum::<u64>() + self.confirming
+        self.schedule().spent().iter().sum::<u64>() + self.confirming
     }
 
     /// What was met so far.
@@ -185,7 +198,12 @@ impl Hunt {
 
     /// The account of evaluations by heuristic.
     pub fn schedule(&self) -> &Schedule {
-        &self.schedule
+        self.portfolio.schedule()
+    }
+
+    /// The ways inside heuristics with their shares.
+    pub fn ways(&self) -> Vec<(Heuristic, &'static str, f64)> {
+        self.portfolio.ways()
     }
 
     /// Evaluations spent on confirming.
@@ -199,14 +217,14 @@ impl Hunt {
     }
 
     fn round_size(&self) -> usize {
-        let growth = (1.0 + self.evaluations() as f64 / GROWTH).sqrt();
-        (FIRST_ROUND * growth).min(LARGEST_ROUND) as usize
+        let usual = self.schedule().usual_cost(Heuristic::Hop).max(1.0);
+        (ROUND_SHARE * self.evaluations() as f64 / usual).clamp(FIRST_ROUND, LARGEST_ROUND) as usize
     }
 
     /// Whether another task fits into the budget, by what tasks usually cost: a small budget is not overrun by a whole
     /// round.
     fn has_room(&self) -> bool {
-        let planned = self.evaluations() as f64 + self.schedule.under_way();
+        let planned = self.evaluations() as f64 + self.schedule().under_way();
         self.settings.max_evaluations.is_none_or(|most| planned < most as f64)
     }
 
@@ -214,19 +232,23 @@ impl Hunt {
         while self.given_drawn < self.settings.given.len() && work.len() < size {
             let point = Proposal::Point(self.settings.given[self.given_drawn].clone().into());
             self.given_drawn += 1;
-            self.schedule.begin(Heuristic::Given);
-            work.push(Work::Descend { heuristic: Heuristic::Given, proposal: point, mark: 0 });
+            self.portfolio.begin_given();
+            work.push(Work::Descend {
+                heuristic: Heuristic::Given,
+                proposal: point,
+                mark: 0,
+                fill: false,
+                ceiling: f64::INFINITY,
+            });
         }
     }
 
-    /// Confirmations of the lowest entries that wait, as far as their share of the evaluations goes. The lowest of all
-    /// is confirmed in any case.
+    /// Confirmations of the lowest entries that wait, as far as their share of the evaluations goes.
     fn draw_confirmations(&mut self, work: &mut Vec<Work>) {
         let cost = self.structure.n_unknowns() as f64;
         let under_way = self.asked_to_confirm.len();
         let allowed = CONFIRMING_SHARE * self.evaluations() as f64 - self.confirming as f64 - under_way as f64 * cost;
         let most = (allowed / cost).max(0.0) as usize;
-        let lowest = self.ledger.lowest_entry();
         for entry in self.ledger.unconfirmed(most + under_way) {
             if self.asked_to_confirm.contains(&entry) {
                 continue;
@@ -234,12 +256,6 @@ impl Hunt {
             let Some(at) = self.ledger.point(entry) else { continue };
             self.asked_to_confirm.insert(entry);
             work.push(Work::Confirm { entry, at });
-        }
-        if let Some(lowest) = lowest.filter(|&entry| !self.ledger.is_confirmed(entry))
-            && self.asked_to_confirm.insert(lowest)
-            && let Some(at) = self.ledger.point(lowest)
-        {
-            work.push(Work::Confirm { entry: lowest, at });
         }
     }
 }

@@ -83,6 +83,16 @@ impl Structure {
         self.scale.len()
     }
 
+    /// The difference of two numbers in a slot; the short way round for cyclic ones.
+    pub fn difference(&self, slot: usize, left: f64, right: f64) -> f64 {
+        let difference = left - right;
+        if !self.cyclic[slot] {
+            return difference;
+        }
+        let period = self.upper[slot] - self.lower[slot];
+        difference - period * (difference / period + 0.5).floor()
+    }
+
     /// Brings a point into the bounds: cyclic unknowns wrap, the others are reflected once and then clamped, so that
     /// moves near a bound do not pile up on it.
     pub fn bring_inside(&self, at: &mut [f64]) {

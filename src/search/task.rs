@@ -29,6 +29,10 @@ pub enum Work {
         proposal: Proposal,
         /// The heuristic's own mark, given back with the result (a chain's number, say).
         mark: u64,
+        /// Whether empty places of a cloud are to be filled after the descent.
+        fill: bool,
+        /// The descent is abandoned once no value below this is in sight.
+        ceiling: f64,
     },
     /// Polish a converged point and test its stiffness.
     Confirm {
@@ -57,6 +61,25 @@ pub enum Proposal {
         /// Its size relative to the scale of the unknowns, for moves that have one.
         step: f64,
     },
+    /// The points of clouds by a random point group.
+    Symmetric {
+        /// A low minimum that tells usual sizes.
+        model: Option<Arc<[f64]>>,
+    },
+    /// Two clouds, cut and spliced.
+    Spliced {
+        /// One parent.
+        mother: Arc<[f64]>,
+        /// The other.
+        father: Arc<[f64]>,
+    },
+    /// The end of an annealing chain.
+    Annealed {
+        /// Where it starts; a uniform start where there is none.
+        from: Option<Arc<[f64]>>,
+        /// Evaluations of the chain.
+        evaluations: u64,
+    },
 }
 
 /// What became of a task.
@@ -72,6 +95,8 @@ pub struct TaskResult {
     pub outside: u64,
     /// The first point outside.
     pub first_outside: Option<Vec<f64>>,
+    /// Fillings of empty places that were tried, and those that moved a point.
+    pub fillings: (u32, u32),
     /// What came of it.
     pub finding: Finding,
 }
@@ -122,4 +147,6 @@ pub enum Lost {
     OutOfBudget,
     /// No step went down, though the gradient had not vanished.
     Stalled,
+    /// No value was in sight that its heuristic could use.
+    Abandoned,
 }

@@ -3,17 +3,17 @@
 use std::sync::Arc;
 use std::sync::mpsc::Sender;
 
-use crate::base::random::{Purpose, stream};
-use crate::descent::{Ask, Confirmation, Descents, EndKind, Judgement, Region};
+use crate::descent::{Ask, Confirmation, Descents, End, EndKind, Judgement, Region};
 use crate::evaluate::Evaluator;
 use crate::kernel::Kernel;
 use crate::ledger::{Candidate, Confirmed, Identity, Kind};
 
+use super::anneal::Annealing;
 use super::crew::Queue;
-use super::settings::Heuristic;
-use super::start;
+use super::moves::Filling;
+use super::start::{self, Beginning};
 use super::structure::Structure;
-use super::task::{Finding, Lost, Proposal, Task, TaskResult, Work};
+use super::task::{Finding, Lost, Task, TaskResult, Work};
 
 /// Tasks that a worker has in hand at once.
 const LANES: usize = 32;
@@ -26,6 +26,9 @@ const MOST_HELD: usize = 8;
 
 /// Times that a cloud at its bounds is brought back to the middle within one descent.
 const MOST_RECENTRINGS: u32 = 3;
+
+/// Times that empty places are filled within one task.
+const MOST_FILLINGS: u32 = 6;
 
 /// Saddles that one confirmation may leave.
 const MOST_SADDLES: u64 = 8;
@@ -76,8 +79,26 @@ struct Job {
     first_outside: Option<Vec<f64>>,
     recentrings: u32,
     saddles: u64,
+    /// What asks for values instead of the descent.
+    stage: Stage,
+    /// Fillings tried, and those that moved a point.
+    fillings: (u32, u32),
+    /// Nothing below the ceiling is in sight.
+    abandoned: bool,
+    /// The lower end of the descents so far, where a filling led to another.
+    best: Option<End>,
     /// The confirmation under way; `None` while the descent is.
     confirmation: Option<Confirmation>,
+}
+
+/// What a task does besides descending: it asks for values only.
+enum Stage {
+    /// Nothing.
+    None,
+    /// It anneals before the descent.
+    Chain(Box<Annealing>),
+    /// It fills empty places after a descent.
+    Filling(Box<Filling>),
 }
 
 impl<'a> Worker<'a> {
@@ -149,11 +170,14 @@ impl<'a> Worker<'a> {
     fn begin(&mut self, task: Task, clearings: u64) {
         let Some(place) = self.jobs.iter().position(Option::is_none) else { return };
         let shop = self.shop;
+        let mut stage = Stage::None;
         let confirmation = match &task.work {
             Work::Confirm { at, .. } => Some(Confirmation::new(&shop.region, at)),
             Work::Descend { heuristic, proposal, .. } => {
-                let start = make_start(shop, &task, *heuristic, proposal);
-                self.descents.start(place, &start);
+                match start::begin(&shop.structure, shop.seed, &task, *heuristic, proposal) {
+                    Beginning::Descent(start) => self.descents.start(place, &start),
+                    Beginning::Chain(chain) => stage = Stage::Chain(chain),
+                }
                 None
             }
         };
@@ -165,6 +189,10 @@ impl<'a> Worker<'a> {
             first_outside: None,
             recentrings: 0,
             saddles: 0,
+            stage,
+            fillings: (0, 0),
+            abandoned: false,
+            best: None,
             confirmation,
         });
     }
@@ -172,14 +200,16 @@ impl<'a> Worker<'a> {
     /// One evaluation, or one matrix, for every task in hand; says how many may have ended.
     fn advance(&mut self) -> usize {
         let mut n_ended = 0;
-        let mut n_confirming = 0;
+        // Tasks that ask by themselves.
+        let mut n_asking = 0;
         let mut n_lanes = LEAST_LANES;
         for (place, job) in self.jobs.iter_mut().enumerate() {
             let Some(job) = job else { continue };
             // Free places are taken from the front, so a narrow machine serves while there is little to do.
             n_lanes = n_lanes.max(place + 1);
+            n_asking += usize::from(!matches!(job.stage, Stage::None));
             let Some(confirmation) = &mut job.confirmation else { continue };
-            n_confirming += 1;
+            n_asking += 1;
             if let Ask::Curvature(at) = confirmation.ask() {
                 let matrix = self.evaluator.curvature(at);
                 // A matrix takes one pass for each unknown.
@@ -190,9 +220,9 @@ impl<'a> Worker<'a> {
         }
         self.evaluator.prepare(n_lanes);
         self.descents.ask(self.evaluator.points_mut());
-        if n_confirming > 0 {
+        if n_asking > 0 {
             for (place, job) in self.jobs.iter().enumerate() {
-                if let Some(Ask::Gradient(at)) = job.as_ref().and_then(Job::asks) {
+                if let Some(at) = job.as_ref().and_then(Job::asks) {
                     self.evaluator.put(place, at);
                 }
             }
@@ -202,13 +232,17 @@ impl<'a> Worker<'a> {
         self.descents.tell(evaluator.points(), evaluator.values(), evaluator.gradients());
         for (place, (job, &value)) in self.jobs.iter_mut().zip(evaluator.values()).enumerate() {
             let Some(job) = job else { continue };
-            if job.confirmation.is_some() && !matches!(job.asks(), Some(Ask::Gradient(_))) {
+            if job.confirmation.is_some() && job.asks().is_none() {
+                // Judged, or its turn for a matrix comes.
                 continue;
             }
             job.evaluations += 1;
             if !value.is_finite() {
                 job.outside += 1;
                 job.first_outside.get_or_insert_with(|| evaluator.point(place));
+            }
+            if job.tell_stage(value, &mut self.descents, place, self.shop) {
+                continue;
             }
             match &mut job.confirmation {
                 Some(confirmation) => {
@@ -220,7 +254,12 @@ impl<'a> Worker<'a> {
                     job.descent_ended(&mut self.descents, place, self.shop);
                     n_ended += 1;
                 }
-                None => {}
+                None => {
+                    if let Work::Descend { ceiling, .. } = job.task.work {
+                        job.abandoned = self.descents.outlook(place) > ceiling;
+                        n_ended += usize::from(job.abandoned);
+                    }
+                }
             }
         }
         n_ended
@@ -232,16 +271,17 @@ impl<'a> Worker<'a> {
         let job = self.jobs[place].as_mut()?;
         let finding = match (&job.task.work, &job.confirmation) {
             (Work::Descend { heuristic, mark, .. }, _) => {
-                if !self.descents.has_ended(place) {
+                let (heuristic, mark) = (*heuristic, *mark);
+                if !matches!(job.stage, Stage::None) || !(job.abandoned || self.descents.has_ended(place)) {
                     return None;
                 }
-                let (heuristic, mark) = (*heuristic, *mark);
-                let end = self.descents.end(place);
+                let end = job.best.take().unwrap_or_else(|| self.descents.end(place));
                 let met = |kinked| {
                     let candidate = Candidate::new(&shop.identity, end.value, end.at.clone().into(), kinked);
                     Finding::Met { heuristic, mark, candidate }
                 };
                 match end.kind {
+                    EndKind::OutOfBudget if job.abandoned => Finding::Lost { heuristic, mark, reason: Lost::Abandoned },
                     EndKind::Converged => met(false),
                     EndKind::Stalled if shop.kinked => met(true),
                     EndKind::Stalled => Finding::Lost { heuristic, mark, reason: Lost::Stalled },
@@ -296,6 +336,7 @@ impl<'a> Worker<'a> {
             evaluations: job.evaluations,
             outside: job.outside,
             first_outside: job.first_outside,
+            fillings: job.fillings,
             finding,
         })
     }
@@ -307,9 +348,17 @@ fn send(finished: &mut Vec<TaskResult>, results: &Sender<TaskResult>) -> bool {
 }
 
 impl Job {
-    /// What its confirmation wants; nothing once it is judged, or while a descent is under way.
-    fn asks(&self) -> Option<Ask<'_>> {
-        self.confirmation.as_ref().filter(|confirmation| confirmation.judgement().is_none()).map(Confirmation::ask)
+    /// The point that it asks for by itself; none while a descent is under way, or a matrix is wanted.
+    fn asks(&self) -> Option<&[f64]> {
+        match &self.stage {
+            Stage::Chain(chain) => return Some(chain.ask()),
+            Stage::Filling(filling) => return Some(filling.ask()),
+            Stage::None => {}
+        }
+        match self.confirmation.as_ref().filter(|confirmation| confirmation.judgement().is_none())?.ask() {
+            Ask::Gradient(at) => Some(at),
+            Ask::Curvature(_) => None,
+        }
     }
 
     fn entry(&self) -> Option<crate::ledger::EntryId> {
@@ -319,32 +368,53 @@ impl Job {
         }
     }
 
-    /// A cloud that drifted against its box is put back into the middle, and goes on.
+    /// A value for a chain or a filling, if there is one; their ends start a descent.
+    fn tell_stage(&mut self, value: f64, descents: &mut Descents, place: usize, shop: &Workshop) -> bool {
+        match &mut self.stage {
+            Stage::None => return false,
+            Stage::Chain(chain) => {
+                chain.tell(&shop.structure, value);
+                if chain.has_ended() {
+                    descents.start(place, chain.result());
+                    self.stage = Stage::None;
+                }
+            }
+            Stage::Filling(filling) => {
+                filling.tell(value);
+                if filling.has_ended() {
+                    if let Some(at) = filling.result() {
+                        self.fillings.1 += 1;
+                        descents.start(place, at);
+                    }
+                    self.stage = Stage::None;
+                }
+            }
+        }
+        true
+    }
+
+    /// A cloud that drifted against its box is put back into the middle, and goes on; then its empty places are filled.
     fn descent_ended(&mut self, descents: &mut Descents, place: usize, shop: &Workshop) {
         let end = descents.end(place);
-        if end.kind != EndKind::Converged || self.recentrings >= MOST_RECENTRINGS {
-            return;
-        }
-        if let Some(moved) = shop.region.recentre(&end.at) {
+        if end.kind == EndKind::Converged
+            && self.recentrings < MOST_RECENTRINGS
+            && let Some(moved) = shop.region.recentre(&end.at)
+        {
             self.recentrings += 1;
             descents.start(place, &moved);
+            return;
         }
-    }
-}
-
-/// The start of a task, from its own random stream.
-fn make_start(shop: &Workshop, task: &Task, heuristic: Heuristic, proposal: &Proposal) -> Vec<f64> {
-    let purpose = if heuristic == Heuristic::Survey { Purpose::Survey } else { Purpose::Task };
-    let mut rng = stream(shop.seed, task.round, task.number, purpose);
-    let structure = &shop.structure;
-    match proposal {
-        Proposal::Point(at) => at.to_vec(),
-        Proposal::Uniform => start::uniform(structure, &mut rng),
-        Proposal::Spread(number) => {
-            // The same offsets for all points of the sequence.
-            let mut offsets = stream(shop.seed, u64::MAX, 0, Purpose::Task);
-            start::spread(structure, *number, &mut offsets, &mut rng)
+        let Work::Descend { fill: true, .. } = self.task.work else { return };
+        let lower = end.kind == EndKind::Converged && self.best.as_ref().is_none_or(|best| end.value < best.value);
+        if lower
+            && self.fillings.0 < MOST_FILLINGS
+            && let Some(filling) = Filling::new(&shop.structure, &end.at, end.value)
+        {
+            self.fillings.0 += 1;
+            self.stage = Stage::Filling(Box::new(filling));
         }
-        Proposal::Moved { from, kind, step } => kind.apply(structure, from, *step, &mut rng),
+        if lower || self.best.is_none() {
+            self.best = Some(end);
+        }
     }
 }

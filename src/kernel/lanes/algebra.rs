@@ -123,8 +123,10 @@ pub struct Memory<'a> {
     pub changes: &'a [Short],
     /// `1 / (step . change)`, and 0 for a pair that is void.
     pub inverses: &'a [Short],
-    /// What a pair's weight is multiplied by on the way back.
-    pub ratios: &'a [Short],
+    /// What the change of each pair was multiplied by; 0 for a pair that is void.
+    pub downs: &'a [Lanes],
+    /// One over the scale of the inverse curvature.
+    pub per_scale: Lanes,
     /// The newest pair.
     pub newest: usize,
 }
@@ -339,7 +341,7 @@ in_each_build! {
 }
 
 /// The most pairs that a memory may have.
-pub const MOST_PAIRS: usize = 16;
+pub const MOST_PAIRS: usize = 20;
 
 #[inline(always)]
 fn recurse(memory: &Memory<'_>, work: &mut [Short]) {
@@ -365,7 +367,9 @@ fn recurse(memory: &Memory<'_>, work: &mut [Short]) {
                 place = if place == 0 { n_pairs - 1 } else { place - 1 };
             }
         } else {
-            let (weight, ratio) = (weights[place], memory.ratios[place].0);
+            let (weight, down) = (weights[place], memory.downs[place].0);
+            let ratio: [f64; BLOCK] = each!(lane => down[lane] * memory.per_scale.0[lane]);
+            let ratio: [f32; BLOCK] = each!(lane => ratio[lane] as f32);
             factor = each!(lane => weight[lane] * ratio[lane] - inverse[lane] * product[lane]);
             added = &memory.steps[place * n..][..n];
             place = if place + 1 == n_pairs { 0 } else { place + 1 };

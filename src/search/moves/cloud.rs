@@ -1,9 +1,9 @@
 //! Moves for clouds of points.
 
 use rand::{Rng, RngExt};
-use rand_distr::{Distribution, UnitCircle, UnitSphere};
 
 use crate::base::order::Total;
+use crate::search::geometry::{centroid_of, distance, points_of, random_direction, touch, usual_contact, write_points};
 use crate::search::structure::{Cloud, Structure};
 
 /// The share of rows that one relocation moves, at most.
@@ -33,13 +33,9 @@ pub fn relocate(structure: &Structure, at: &mut [f64], rng: &mut impl Rng) {
     for _ in 0..n_moved {
         let row = pool.swap_remove(rng.random_range(0..pool.len()));
         let direction = random_direction(cloud.dimensions, rng);
-        placed[row] = touch(&placed, row, &centroid, &direction, contact);
+        placed[row] = touch(&placed, Some(row), &centroid, &direction, contact);
     }
-    for (row, point) in placed.iter().enumerate() {
-        for k in 0..cloud.dimensions {
-            at[cloud.rows[row][k]] = point[k];
-        }
-    }
+    write_points(cloud, &placed, at);
 }
 
 /// Exchanges the places of two rows of different kinds, a few times at most.
@@ -64,63 +60,6 @@ fn choose<'a>(structure: &'a Structure, rng: &mut impl Rng) -> Option<&'a Cloud>
         0 => None,
         n => structure.clouds.get(rng.random_range(0..n)),
     }
-}
-
-fn points_of(cloud: &Cloud, at: &[f64]) -> Vec<[f64; 3]> {
-    let coordinate = |row: &[usize; 3], k: usize| if k < cloud.dimensions { at[row[k]] } else { 0.0 };
-    cloud.rows.iter().map(|row| [coordinate(row, 0), coordinate(row, 1), coordinate(row, 2)]).collect()
-}
-
-fn centroid_of(points: &[[f64; 3]]) -> [f64; 3] {
-    let mut centroid = [0.0; 3];
-    for point in points {
-        (0..3).for_each(|k| centroid[k] += point[k] / points.len() as f64);
-    }
-    centroid
-}
-
-fn distance(left: &[f64; 3], right: &[f64; 3]) -> f64 {
-    (0..3).map(|k| (left[k] - right[k]) * (left[k] - right[k])).sum::<f64>().sqrt()
-}
-
-/// The median distance of a row to its nearest neighbour.
-fn usual_contact(points: &[[f64; 3]]) -> f64 {
-    let mut nearest: Vec<Total> = (0..points.len())
-        .map(|row| {
-            let others = (0..points.len()).filter(|&other| other != row);
-            Total(others.map(|other| distance(&points[row], &points[other])).fold(f64::INFINITY, f64::min))
-        })
-        .collect();
-    nearest.sort();
-    nearest[nearest.len() / 2].0
-}
-
-/// By rejection (Marsaglia 1972): products and a square root only, so the bits are the same everywhere.
-fn random_direction(dimensions: usize, rng: &mut impl Rng) -> [f64; 3] {
-    if dimensions == 2 {
-        let [x, y]: [f64; 2] = UnitCircle.sample(rng);
-        return [x, y, 0.0];
-    }
-    UnitSphere.sample(rng)
-}
-
-/// The outermost place on the ray from the centroid at which the nearest other row is exactly `contact` away: there
-/// the row touches the surface from outside.
-fn touch(points: &[[f64; 3]], row: usize, centroid: &[f64; 3], direction: &[f64; 3], contact: f64) -> [f64; 3] {
-    let mut reach: f64 = 0.0;
-    for (other, point) in points.iter().enumerate() {
-        if other == row {
-            continue;
-        }
-        let offset = [point[0] - centroid[0], point[1] - centroid[1], point[2] - centroid[2]];
-        let along: f64 = (0..3).map(|k| offset[k] * direction[k]).sum();
-        let aside = (0..3).map(|k| offset[k] * offset[k]).sum::<f64>() - along * along;
-        let half = contact * contact - aside;
-        if half > 0.0 {
-            reach = reach.max(along + half.sqrt());
-        }
-    }
-    std::array::from_fn(|k| centroid[k] + reach * direction[k])
 }
 
 #[cfg(test)]
