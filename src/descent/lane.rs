@@ -74,6 +74,8 @@ pub struct Lane {
     pub value: f64,
     /// The largest element of the gradient there.
     pub size: f64,
+    /// One over it; 0 where that is not finite.
+    pub unit: f64,
     /// The step is so many times the direction, at full length; never more than 0.
     factor: f64,
     /// How much of the full length the trial goes.
@@ -99,6 +101,7 @@ impl Lane {
             evaluations: 0,
             value: f64::NAN,
             size: 0.0,
+            unit: 0.0,
             factor: 0.0,
             length: 0.0,
             slope: 0.0,

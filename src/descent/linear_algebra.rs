@@ -63,6 +63,9 @@ pub fn eigenvalues(matrix: &[f64], n: usize) -> Vec<f64> {
 
 /// The matrix without what it does along some orthonormal directions, and with `stiffness` along them instead.
 pub fn lift(matrix: &[f64], n: usize, directions: &[Vec<f64>], stiffness: f64) -> Vec<f64> {
+    if n == 0 {
+        return Vec::new();
+    }
     // P A P + stiffness D D^T with P = 1 - D D^T, as A - D C^T - C D^T with C = A D - D (D^T A D + stiffness) / 2.
     let width = padded(n);
     let algebra = Algebra::new();
@@ -78,7 +81,7 @@ pub fn lift(matrix: &[f64], n: usize, directions: &[Vec<f64>], stiffness: f64) -
         }
     }
     algebra.take_off(&mut lifted, n, &columns, &halves);
-    lifted.chunks_exact(width.max(1)).flat_map(|row| &row[..n]).copied().collect()
+    lifted.chunks_exact(width).flat_map(|row| &row[..n]).copied().collect()
 }
 
 fn pad(matrix: &[f64], n: usize) -> Vec<f64> {
@@ -253,5 +256,29 @@ mod tests {
         solve(&cholesky(&matrix, n).unwrap(), n, &mut x);
         assert!(x.iter().enumerate().all(|(k, x)| (x - k as f64).abs() < 1e-9));
         assert_eq!(cholesky(&[1.0, 2.0, 2.0, 1.0], 2), None);
+    }
+
+    /// Along the directions there is the new stiffness, and across them what was there.
+    #[test]
+    fn lifted_directions_are_eigenvectors() {
+        for n in [3, 8, 21] {
+            let matrix = random_symmetric(n);
+            let third = (1.0_f64 / 3.0).sqrt();
+            let unit = |places: [usize; 3], signs: [f64; 3]| {
+                let mut direction = vec![0.0; n];
+                (0..3).for_each(|k| direction[places[k]] = third * signs[k]);
+                direction
+            };
+            let directions = [unit([0, 1, 2], [1.0, 1.0, 1.0])];
+            let lifted = lift(&matrix, n, &directions, 7.0);
+            for row in 0..n {
+                let image = lifted[row * n..(row + 1) * n].iter().zip(&directions[0]).map(|(a, d)| a * d).sum::<f64>();
+                assert!((image - 7.0 * directions[0][row]).abs() < 1e-13, "n = {n}, row {row}");
+            }
+            // Across: (1, -1, 0) / sqrt(2) is orthogonal to it.
+            let across = |m: &[f64]| m[0] - m[1] - m[n] + m[n + 1];
+            assert!((across(&lifted) - across(&matrix)).abs() < 1e-13);
+        }
+        assert!(lift(&[], 0, &[], 1.0).is_empty());
     }
 }

@@ -27,6 +27,8 @@ pub struct Pairs {
     /// What the change of each pair was multiplied by.
     downs: Vec<Lanes>,
     newest: usize,
+    /// For each lane, a bit for each pair that is not void.
+    kept: [u32; BLOCK],
     /// `(step . change) / (change . change)` of the newest pair that is not void: the scale of the inverse curvature.
     scale: Lanes,
 }
@@ -42,6 +44,7 @@ impl Pairs {
             inverses: vec![Short::ZERO; n_pairs],
             downs: vec![Lanes::ZERO; n_pairs],
             newest: 0,
+            kept: [0; BLOCK],
             scale: Lanes([1.0; BLOCK]),
         }
     }
@@ -52,11 +55,12 @@ impl Pairs {
         self.inverses.iter_mut().for_each(|inverse| inverse.0[lane] = 0.0);
         self.downs.iter_mut().for_each(|down| down.0[lane] = 0.0);
         self.scale.0[lane] = 1.0;
+        self.kept[lane] = 0;
     }
 
     /// Whether nothing is remembered about a lane.
     pub fn is_empty(&self, lane: usize) -> bool {
-        self.inverses.iter().all(|inverse| inverse.0[lane] == 0.0)
+        self.kept[lane] == 0
     }
 
     /// The scale of a lane's inverse curvature.
@@ -69,6 +73,7 @@ impl Pairs {
         self.newest = (self.newest + 1) % self.inverses.len();
         self.inverses[self.newest] = Short::ZERO;
         self.downs[self.newest] = Lanes::ZERO;
+        self.kept.iter_mut().for_each(|kept| *kept &= !(1 << self.newest));
         let rows = self.newest * self.length..(self.newest + 1) * self.length;
         (&mut self.steps[rows.clone()], &mut self.changes[rows])
     }
@@ -95,6 +100,7 @@ impl Pairs {
         }
         self.inverses[self.newest].0[lane] = inverse;
         self.downs[self.newest].0[lane] = down;
+        self.kept[lane] |= 1 << self.newest;
         self.scale.0[lane] = f64::from(curvature) / f64::from(square) * down;
     }
 

@@ -233,7 +233,7 @@ impl Block {
                 expected: expected.0[lane],
             };
             // The first point has no step before it: its pair is of zeros, and void.
-            let down = if state.phase == Phase::Begun { 0.0 } else { 1.0 / state.size };
+            let down = if state.phase == Phase::Begun { 0.0 } else { state.unit };
             match state.take(&answer, shared.most) {
                 Step::Accept => {
                     state.value = values[lane];
@@ -241,7 +241,8 @@ impl Block {
                     how.taken.0[lane] = 1.0;
                     how.down.0[lane] = down;
                     let unit = 1.0 / state.size;
-                    how.unit.0[lane] = if unit.is_finite() { unit } else { 0.0 };
+                    state.unit = if unit.is_finite() { unit } else { 0.0 };
+                    how.unit.0[lane] = state.unit;
                 }
                 Step::Restart => self.restart(lane, shared),
                 Step::Shorten | Step::End => {}
@@ -270,7 +271,8 @@ impl Block {
         }
         let free = bounds.map(|_| &self.free[..]);
         let (work, direction) = (&mut self.work, &mut self.direction);
-        let directed = algebra.direct(&self.pairs.memory(), &self.gradient, free, &how.taken, work, direction);
+        let directed =
+            algebra.direct(&self.pairs.memory(), &sums.aim, &self.gradient, free, &how.taken, work, direction);
         for lane in (0..BLOCK).filter(|&lane| taken(lane)) {
             let state = &mut self.lanes[lane];
             if sums.steepness.0[lane] == 0.0 {
@@ -303,6 +305,98 @@ impl Block {
             state.end(EndKind::Converged);
         } else {
             state.set_out(true, FIRST / largest, product, largest, shared.most);
+        }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::landscape::Slot;
+
+    const N: usize = 5;
+    const N_STARTS: usize = 40;
+
+    /// A chain of narrow curved valleys (Rosenbrock 1960) with a part that is outside.
+    fn value_and_gradient(x: [f64; N]) -> (f64, [f64; N]) {
+        let mut gradient = [0.0; N];
+        let mut value = 0.0;
+        for k in 0..N - 1 {
+            let (bend, rest) = (x[k + 1] - x[k] * x[k], 1.0 - x[k]);
+            value += 100.0 * bend * bend + rest * rest;
+            gradient[k] += -400.0 * bend * x[k] - 2.0 * rest;
+            gradient[k + 1] += 200.0 * bend;
+        }
+        (if x[0] > 1.7 { f64::NAN } else { value }, gradient)
+    }
+
+    fn region() -> Arc<Region> {
+        let slot = |upper| Slot { lower: -2.0, upper, start_lower: -2.0, start_upper: 2.0, cyclic: false };
+        // The third unknown ends at its bound.
+        let slots = [2.0, 2.0, 0.6, 2.0, 2.0].map(slot);
+        Arc::new(Region::new(&slots, &[]))
+    }
+
+    fn start(number: usize) -> [f64; N] {
+        std::array::from_fn(|slot| 1.9 * crate::numbers::functions::sine((7 * number + 3 * slot) as f64))
+    }
+
+    /// Ends and evaluations of descents from all starts, each lane with the next start as soon as it is free.
+    fn descend(lanes: usize, width: usize, build: Build, order: &[usize]) -> Vec<Option<(End, u64)>> {
+        let mut descents = Descents::with_build(&region(), lanes, 500, build);
+        let mut waiting = order.iter();
+        let mut tenants: Vec<Option<usize>> = vec![None; width];
+        let mut ends = vec![None; N_STARTS];
+        let (mut points, mut gradients) = (vec![0.0; N * width], vec![0.0; N * width]);
+        loop {
+            for lane in 0..width {
+                if let Some(tenant) = tenants[lane].filter(|_| descents.has_ended(lane)) {
+                    ends[tenant] = Some((descents.end(lane), descents.evaluations(lane)));
+                    descents.leave(lane);
+                    tenants[lane] = None;
+                }
+                if tenants[lane].is_none()
+                    && let Some(&next) = waiting.next()
+                {
+                    descents.start(lane, &start(next));
+                    tenants[lane] = Some(next);
+                }
+            }
+            if tenants.iter().all(Option::is_none) {
+                return ends;
+            }
+            descents.ask(&mut points);
+            let mut values = vec![0.0; width];
+            for lane in 0..width {
+                let (value, gradient) = value_and_gradient(std::array::from_fn(|slot| points[slot * width + lane]));
+                values[lane] = value;
+                (0..N).for_each(|slot| gradients[slot * width + lane] = gradient[slot]);
+            }
+            descents.tell(&points, &values, &gradients);
+        }
+    }
+
+    /// The bits of a descent do not depend on its lane, its neighbours, who was there before, the width or the build.
+    #[test]
+    fn lanes_know_nothing_of_each_other() {
+        let alone: Vec<_> = (0..N_STARTS).map(|k| descend(8, 8, Build::Baseline, &[k])[k].clone().unwrap()).collect();
+        let kinds = |kind| alone.iter().filter(|(end, _)| end.kind == kind).count();
+        assert!(kinds(EndKind::Converged) > 20 && kinds(EndKind::Outside) > 2, "{alone:?}");
+        assert!(alone.iter().any(|(end, _)| end.at[2] == 0.6), "no descent ends at the bound");
+        let upward: Vec<usize> = (0..N_STARTS).collect();
+        let mixed: Vec<usize> = (0..N_STARTS).map(|k| (k * 27 + 5) % N_STARTS).collect();
+        for build in [Build::Baseline, Build::Avx2, Build::Avx512] {
+            for (lanes, width) in [(8, 8), (32, 8), (32, 16), (32, 32)] {
+                for order in [&upward, &mixed] {
+                    for (number, together) in descend(lanes, width, build, order).into_iter().enumerate() {
+                        let (end, evaluations) = together.unwrap();
+                        let (other, other_evaluations) = &alone[number];
+                        let bits = |end: &End| -> Vec<u64> { end.at.iter().map(|x| x.to_bits()).collect() };
+                        assert_eq!((end.kind, bits(&end)), (other.kind, bits(other)), "{build:?}, start {number}");
+                        assert_eq!((end.value.to_bits(), evaluations), (other.value.to_bits(), *other_evaluations));
+                    }
+                }
+            }
         }
     }
 }

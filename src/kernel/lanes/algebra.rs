@@ -111,6 +111,8 @@ pub struct Summed {
     pub square: Short,
     /// step . step
     pub length: Short,
+    /// step . work
+    pub aim: Short,
     /// The largest element of the new gradient, without what bounds hold.
     pub steepness: Lanes,
 }
@@ -279,6 +281,7 @@ fn accept_here<const HOLD: bool>(
 ) -> Summed {
     let Acceptance { taken: Lanes(taken), down: Lanes(down), unit: Lanes(unit) } = *how;
     let (mut curvature, mut square, mut length) = ([0.0_f32; BLOCK], [0.0_f32; BLOCK], [0.0_f32; BLOCK]);
+    let mut aim = [0.0_f32; BLOCK];
     let mut steepness = [0.0; BLOCK];
     let free = pair.free;
     let (work, padding) = pair.work.split_at_mut(scale.len());
@@ -316,26 +319,35 @@ fn accept_here<const HOLD: bool>(
         }
         let size: [f64; BLOCK] = each!(lane => moving[lane].abs());
         steepness = each!(lane => if size[lane] > steepness[lane] { size[lane] } else { steepness[lane] });
-        work.0 = each!(lane => (moving[lane] * unit[lane]) as f32);
+        let measured: [f32; BLOCK] = each!(lane => (moving[lane] * unit[lane]) as f32);
+        work.0 = measured;
+        aim = each!(lane => aim[lane] + moved[lane] * measured[lane]);
     }
-    Summed { curvature: Short(curvature), square: Short(square), length: Short(length), steepness: Lanes(steepness) }
+    Summed {
+        curvature: Short(curvature),
+        square: Short(square),
+        length: Short(length),
+        aim: Short(aim),
+        steepness: Lanes(steepness),
+    }
 }
 
 in_each_build! {
     /// Turns the work (gradients) into the remembered inverse curvature times it, up to the scale of the newest pair: the
-    /// two-loop recursion (Nocedal 1980). Lanes that accepted get it as their direction, 0 where a bound holds.
+    /// two-loop recursion (Nocedal 1980), given the product of the newest step with the work. Lanes that accepted get it as their direction, 0 where a bound holds.
     direct(
         memory: &Memory<'_>,
+        aim: &Short,
         gradient: &[Lanes],
         free: Option<&[Short]>,
         taken: &Lanes,
         work: &mut [Short],
         direction: &mut [Short],
     ) -> Directed {
-        recurse(memory, work);
+        let last = recurse(memory, aim, work);
         match free {
-            Some(free) => finish::<true>(gradient, free, taken, work, direction),
-            None => finish::<false>(gradient, &[], taken, work, direction),
+            Some(free) => finish::<true>(gradient, free, taken, work, last, direction),
+            None => finish::<false>(gradient, &[], taken, work, last, direction),
         }
     }
 }
@@ -343,20 +355,21 @@ in_each_build! {
 /// The most pairs that a memory may have.
 pub const MOST_PAIRS: usize = 20;
 
+/// All of the recursion but the last sum, whose factor and vector it gives.
 #[inline(always)]
-fn recurse(memory: &Memory<'_>, work: &mut [Short]) {
+fn recurse<'a>(memory: &Memory<'a>, aim: &Short, work: &mut [Short]) -> ([f32; BLOCK], &'a [Short]) {
     let n_pairs = memory.inverses.len().min(MOST_PAIRS);
     let n = work.len();
     let mut weights = [[0.0_f32; BLOCK]; MOST_PAIRS];
     // One loop over all passes, so that the body is there once: each adds a multiple of one vector to the work and
-    // multiplies the result with the vector of the next pass. First the newest pair's step, nothing added.
+    // multiplies the result with the vector of the next pass.
     let mut factor = [0.0_f32; BLOCK];
     let mut place = memory.newest;
     let mut added = &memory.changes[place * n..][..n];
     for pass in 0..2 * n_pairs {
         let forward = pass < n_pairs;
         let other = if forward { &memory.steps[place * n..][..n] } else { &memory.changes[place * n..][..n] };
-        let product = add_and_multiply(work, factor, added, other);
+        let product = if pass == 0 { aim.0 } else { add_and_multiply(work, factor, added, other) };
         let inverse = memory.inverses[place].0;
         if forward {
             let weight: [f32; BLOCK] = each!(lane => inverse[lane] * product[lane]);
@@ -375,10 +388,7 @@ fn recurse(memory: &Memory<'_>, work: &mut [Short]) {
             place = if place + 1 == n_pairs { 0 } else { place + 1 };
         }
     }
-    for (work, added) in work.iter_mut().zip(added) {
-        let sum: [f32; BLOCK] = each!(lane => work.0[lane] + factor[lane] * added.0[lane]);
-        work.0 = sum;
-    }
+    (factor, added)
 }
 
 /// `work += factor * added`, and then the inner product of the work with the other: even and odd slots apart, since one
@@ -404,13 +414,15 @@ fn finish<const HOLD: bool>(
     free: &[Short],
     taken: &Lanes,
     work: &[Short],
+    (factor, added): ([f32; BLOCK], &[Short]),
     direction: &mut [Short],
 ) -> Directed {
     let (mut slope, mut largest) = ([0.0; BLOCK], [0.0_f32; BLOCK]);
     let taken: [f32; BLOCK] = each!(lane => taken.0[lane] as f32);
-    for (slot, ((gradient, work), direction)) in gradient.iter().zip(work).zip(direction).enumerate() {
+    let sums = work.iter().zip(added);
+    for (slot, ((gradient, (work, added)), direction)) in gradient.iter().zip(sums).zip(direction).enumerate() {
         let (g, old) = (gradient.0, direction.0);
-        let mut along = work.0;
+        let mut along: [f32; BLOCK] = each!(lane => work.0[lane] + factor[lane] * added.0[lane]);
         if HOLD {
             let share = free[slot].0;
             along = each!(lane => along[lane] * share[lane]);

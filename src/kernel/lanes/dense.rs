@@ -119,3 +119,34 @@ in_each_build! {
         (diagonal, beside)
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::numbers::functions::sine;
+
+    /// Every build gives the same bits.
+    #[test]
+    fn builds_agree() {
+        for n in [1, 2, 7, 8, 13, 39] {
+            let width = padded(n);
+            let mut matrix = vec![0.0; n * width];
+            for row in 0..n {
+                for column in 0..n {
+                    matrix[row * width + column] = sine((row * column) as f64) + sine((row + column) as f64);
+                }
+            }
+            let vectors: Vec<f64> =
+                (0..2 * width).map(|k| if k % width < n { sine((3 * k + 1) as f64) } else { 0.0 }).collect();
+            let results = [Build::Baseline, Build::Avx2, Build::Avx512].map(|build| {
+                let algebra = Algebra::with_build(build);
+                let images = algebra.images(&matrix, n, &vectors);
+                let mut less = matrix.clone();
+                algebra.take_off(&mut less, n, &vectors, &images);
+                let (diagonal, beside) = algebra.tridiagonal(&mut less.clone(), n);
+                [images, less, diagonal, beside].concat().iter().map(|x| x.to_bits()).collect::<Vec<_>>()
+            });
+            assert!(results[0] == results[1] && results[0] == results[2], "n = {n}");
+        }
+    }
+}
