@@ -146,8 +146,8 @@ impl<'a> Worker<'a> {
                 }
                 continue;
             }
-            let n_ended = self.advance();
-            if n_ended > 0 {
+            let n_over = self.advance();
+            if n_over > 0 {
                 let before = finished.len();
                 finished.extend((0..LANES).filter_map(|place| self.harvest(place)));
                 n_busy -= finished.len() - before;
@@ -197,9 +197,8 @@ impl<'a> Worker<'a> {
         });
     }
 
-    /// One evaluation, or one matrix, for every task in hand; says how many may have ended.
+    /// One evaluation, or one matrix, for every task in hand; says how many wait to be harvested.
     fn advance(&mut self) -> usize {
-        let mut n_ended = 0;
         // Tasks that ask by themselves.
         let mut n_asking = 0;
         let mut n_lanes = LEAST_LANES;
@@ -215,7 +214,6 @@ impl<'a> Worker<'a> {
                 // A matrix takes one pass for each unknown.
                 job.evaluations += at.len() as u64;
                 confirmation.tell_curvature(&matrix);
-                n_ended += usize::from(confirmation.judgement().is_some());
             }
         }
         self.evaluator.prepare(n_lanes);
@@ -230,39 +228,36 @@ impl<'a> Worker<'a> {
         self.evaluator.run();
         let evaluator = &self.evaluator;
         self.descents.tell(evaluator.points(), evaluator.values(), evaluator.gradients());
+        let mut n_over = 0;
         for (place, (job, &value)) in self.jobs.iter_mut().zip(evaluator.values()).enumerate() {
             let Some(job) = job else { continue };
-            if job.confirmation.is_some() && job.asks().is_none() {
-                // Judged, or its turn for a matrix comes.
-                continue;
-            }
-            job.evaluations += 1;
-            if !value.is_finite() {
-                job.outside += 1;
-                job.first_outside.get_or_insert_with(|| evaluator.point(place));
-            }
-            if job.tell_stage(value, &mut self.descents, place, self.shop) {
-                continue;
-            }
-            match &mut job.confirmation {
-                Some(confirmation) => {
-                    evaluator.read_gradient(place, &mut self.gradient);
-                    confirmation.tell_gradient(value, &self.gradient);
-                    n_ended += usize::from(confirmation.judgement().is_some());
+            // Not where it is judged, or its turn for a matrix comes.
+            if job.confirmation.is_none() || job.asks().is_some() {
+                job.evaluations += 1;
+                if !value.is_finite() {
+                    job.outside += 1;
+                    job.first_outside.get_or_insert_with(|| evaluator.point(place));
                 }
-                None if self.descents.has_ended(place) => {
-                    job.descent_ended(&mut self.descents, place, self.shop);
-                    n_ended += 1;
-                }
-                None => {
-                    if let Work::Descend { ceiling, .. } = job.task.work {
-                        job.abandoned = self.descents.outlook(place) > ceiling;
-                        n_ended += usize::from(job.abandoned);
+                if !job.tell_stage(value, &mut self.descents, place, self.shop) {
+                    match &mut job.confirmation {
+                        Some(confirmation) => {
+                            evaluator.read_gradient(place, &mut self.gradient);
+                            confirmation.tell_gradient(value, &self.gradient);
+                        }
+                        None if self.descents.has_ended(place) => {
+                            job.descent_ended(&mut self.descents, place, self.shop);
+                        }
+                        None => {
+                            if let Work::Descend { ceiling, .. } = job.task.work {
+                                job.abandoned = self.descents.outlook(place) > ceiling;
+                            }
+                        }
                     }
                 }
             }
+            n_over += usize::from(job.is_over(&self.descents, place));
         }
-        n_ended
+        n_over
     }
 
     /// The result of a place whose task has ended.
@@ -358,6 +353,14 @@ impl Job {
         match self.confirmation.as_ref().filter(|confirmation| confirmation.judgement().is_none())?.ask() {
             Ask::Gradient(at) => Some(at),
             Ask::Curvature(_) => None,
+        }
+    }
+
+    /// Whether there is something to harvest.
+    fn is_over(&self, descents: &Descents, place: usize) -> bool {
+        match &self.confirmation {
+            Some(confirmation) => confirmation.judgement().is_some(),
+            None => matches!(self.stage, Stage::None) && (self.abandoned || descents.has_ended(place)),
         }
     }
 
