@@ -58,6 +58,24 @@ impl Pairs {
         self.kept[lane] = 0;
     }
 
+    /// Takes over what another memory of the same size remembers about a lane, pair by pair from the newest.
+    pub fn take_over(&mut self, lane: usize, other: &Pairs, other_lane: usize) {
+        let n_pairs = self.inverses.len();
+        self.kept[lane] = 0;
+        self.scale.0[lane] = other.scale.0[other_lane];
+        for age in 0..n_pairs {
+            let [to, from] = [self.newest, other.newest].map(|newest| (newest + n_pairs - age) % n_pairs);
+            self.inverses[to].0[lane] = other.inverses[from].0[other_lane];
+            self.downs[to].0[lane] = other.downs[from].0[other_lane];
+            self.kept[lane] |= (other.kept[other_lane] >> from & 1) << to;
+            for row in 0..self.length {
+                let (to, from) = (to * self.length + row, from * self.length + row);
+                self.steps[to].0[lane] = other.steps[from].0[other_lane];
+                self.changes[to].0[lane] = other.changes[from].0[other_lane];
+            }
+        }
+    }
+
     /// Whether nothing is remembered about a lane.
     pub fn is_empty(&self, lane: usize) -> bool {
         self.kept[lane] == 0

@@ -146,11 +146,28 @@ impl<'a> Worker<'a> {
                 }
                 continue;
             }
+            self.draw_together(n_busy);
             let n_over = self.advance();
             if n_over > 0 {
                 let before = finished.len();
                 finished.extend((0..LANES).filter_map(|place| self.harvest(place)));
                 n_busy -= finished.len() - before;
+            }
+        }
+    }
+
+    /// Moves what is left of a batch to the front, so that a narrow machine serves it.
+    fn draw_together(&mut self, n_busy: usize) {
+        let width = if n_busy <= LEAST_LANES { LEAST_LANES } else { LANES / 2 };
+        if n_busy > width {
+            return;
+        }
+        for place in width..LANES {
+            if self.jobs[place].is_some()
+                && let Some(free) = self.jobs[..width].iter().position(Option::is_none)
+            {
+                self.jobs.swap(place, free);
+                self.descents.shift(place, free);
             }
         }
     }
