@@ -240,13 +240,13 @@ impl Block {
             Lanes::ZERO
         };
         let mut how = Acceptance { taken: Lanes::ZERO, down: Lanes::ZERO, unit: Lanes::ZERO };
-        for lane in 0..BLOCK {
+        for (lane, &value) in values.iter().enumerate() {
             let state = &mut self.lanes[lane];
             if !state.is_under_way() {
                 continue;
             }
             let answer = Answer {
-                value: values[lane],
+                value,
                 finite: judged.doubt.0[lane] == 0.0,
                 along: judged.along.0[lane],
                 expected: expected.0[lane],
@@ -255,7 +255,7 @@ impl Block {
             let down = if state.phase == Phase::Begun { 0.0 } else { state.unit };
             match state.take(&answer, shared.most) {
                 Step::Accept => {
-                    state.value = values[lane];
+                    state.value = value;
                     state.size = judged.largest.0[lane];
                     how.taken.0[lane] = 1.0;
                     how.down.0[lane] = down;
@@ -369,19 +369,19 @@ mod tests {
         let (mut points, mut gradients) = (vec![0.0; N * width], vec![0.0; N * width]);
         let (mut turns, mut shifts) = (0, 0);
         loop {
-            for lane in 0..width {
-                if let Some(tenant) = tenants[lane].filter(|_| descents.has_ended(lane)) {
+            for (lane, place) in tenants.iter_mut().enumerate() {
+                if let Some(tenant) = place.filter(|_| descents.has_ended(lane)) {
                     ends[tenant] = Some((descents.end(lane), descents.evaluations(lane)));
                     descents.leave(lane);
-                    tenants[lane] = None;
+                    *place = None;
                 }
                 // Lane 3 is kept free for those who move in.
-                if tenants[lane].is_none()
+                if place.is_none()
                     && (width < 32 || lane != 3)
                     && let Some(&next) = waiting.next()
                 {
                     descents.start(lane, &start(next));
-                    tenants[lane] = Some(next);
+                    *place = Some(next);
                 }
             }
             if tenants.iter().all(Option::is_none) {

@@ -178,7 +178,7 @@ macro_rules! in_each_build {
     ($(#[$about:meta])* $name:ident($($argument:ident: $kind:ty),* $(,)?) -> $result:ty $body:block) => {
         impl Algebra {
             $(#[$about])*
-            #[allow(unused_mut, reason = "some bodies change what they are given")]
+            #[allow(clippy::too_many_arguments, reason = "slices of one block, which its owner lends apart")]
             pub fn $name(&self, $($argument: $kind),*) -> $result {
                 #[inline(always)]
                 fn here($($argument: $kind),*) -> $result $body
@@ -230,7 +230,7 @@ in_each_build! {
             along = each!(lane => along[lane] + g[lane] * direction[lane]);
             let size: [f64; BLOCK] = each!(lane => g[lane].abs());
             largest = each!(lane => if size[lane] > largest[lane] { size[lane] } else { largest[lane] });
-            doubt = each!(lane => doubt[lane] + (g[lane] - g[lane]));
+            doubt = each!(lane => doubt[lane] + g[lane] * 0.0);
         }
         Judged { along: Lanes(along), largest: Lanes(largest), doubt: Lanes(doubt) }
     }
