@@ -8,7 +8,7 @@
 
 use std::sync::Arc;
 
-use super::linear_algebra::{cholesky, eigenvalues, eigenvector, solve};
+use super::linear_algebra::{cholesky, eigenvalues, eigenvector, lift, solve};
 use super::region::Region;
 
 /// An eigenvalue below this, relative to the largest, is as good as 0. The softest true mode of small clusters is 1e-5
@@ -177,8 +177,7 @@ impl Confirmation {
             return;
         }
         self.motions = self.free_motions();
-        let size = scaled.iter().fold(0.0, |most: f64, x| most.max(x.abs()));
-        let lifted = lift(&scaled, n, &self.motions, 4.0 * size * (n as f64));
+        let lifted = lift(&scaled, n, &self.motions, beyond(&scaled, n));
         let mut spectrum = eigenvalues(&lifted, n);
         spectrum.truncate(n - self.motions.len());
         self.stiffest = spectrum.last().copied().unwrap_or(0.0).max(0.0);
@@ -192,7 +191,7 @@ impl Confirmation {
         self.stiffness = self.own_units(matrix, &spectrum);
         self.residual = self.residual_of(&self.gradient);
         // A flat direction is lifted a little, so that the step along it stays finite.
-        let mut solvable = lift(&scaled, n, &self.motions, self.stiffest.max(f64::MIN_POSITIVE));
+        let mut solvable = lifted;
         if self.flat {
             (0..n).for_each(|k| solvable[k * n + k] += 1e-6 * self.stiffest + f64::MIN_POSITIVE);
         }
@@ -305,10 +304,9 @@ impl Confirmation {
                         part[row * n + column] = matrix[a * all + b];
                     }
                 }
-                let size = part.iter().fold(0.0, |most: f64, x| most.max(x.abs()));
                 // The motions in own units: scaled back, and made orthonormal again.
                 let motions = own_motions(&self.motions, &self.free, &self.region.scale);
-                let mut own = eigenvalues(&lift(&part, n, &motions, 4.0 * size * (n as f64)), n);
+                let mut own = eigenvalues(&lift(&part, n, &motions, beyond(&part, n)), n);
                 own.truncate(n - motions.len());
                 own
             }
@@ -317,6 +315,13 @@ impl Confirmation {
         own.sort_by(f64::total_cmp);
         own
     }
+}
+
+/// A stiffness beyond all eigenvalues: twice the largest sum of sizes in a row (Gershgorin 1931).
+fn beyond(matrix: &[f64], n: usize) -> f64 {
+    let sums = matrix.chunks_exact(n.max(1)).map(|row| row.iter().map(|x| x.abs()).sum::<f64>());
+    // Not 0, so that even a matrix of zeros gets a factor.
+    2.0 * sums.fold(0.0, f64::max) + f64::MIN_POSITIVE
 }
 
 fn own_motions(motions: &[Vec<f64>], free: &[usize], scale: &[f64]) -> Vec<Vec<f64>> {
@@ -336,22 +341,4 @@ fn own_motions(motions: &[Vec<f64>], free: &[usize], scale: &[f64]) -> Vec<Vec<f
         }
     }
     own
-}
-
-/// The matrix without what it does along some orthonormal directions, and with `stiffness` along them instead.
-fn lift(matrix: &[f64], n: usize, directions: &[Vec<f64>], stiffness: f64) -> Vec<f64> {
-    let mut lifted = matrix.to_vec();
-    for direction in directions {
-        // P A P with P = 1 - d d^T, plus stiffness d d^T.
-        let image: Vec<f64> =
-            (0..n).map(|row| lifted[row * n..(row + 1) * n].iter().zip(direction).map(|(a, d)| a * d).sum()).collect();
-        let along: f64 = image.iter().zip(direction).map(|(a, d)| a * d).sum();
-        for row in 0..n {
-            for column in 0..n {
-                let (a, b) = (direction[row], direction[column]);
-                lifted[row * n + column] += (along + stiffness) * a * b - a * image[column] - image[row] * b;
-            }
-        }
-    }
-    lifted
 }

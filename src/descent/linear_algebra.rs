@@ -1,6 +1,9 @@
 //! Dense symmetric matrices: Cholesky, eigenvalues, an eigenvector. Row by row, only products, sums and square roots, in
 //! a fixed order: a library's matrix products choose fused instructions by processor, and the bits would follow.
 
+use crate::kernel::lanes::algebra::Algebra;
+use crate::kernel::lanes::dense::padded;
+
 /// The lower triangle `L` with `L L^T = matrix`; `None` where the matrix is not positive definite.
 pub fn cholesky(matrix: &[f64], n: usize) -> Option<Vec<f64>> {
     let mut lower = vec![0.0; n * n];
@@ -52,48 +55,42 @@ fn product(left: &[f64], right: &[f64]) -> f64 {
 /// The eigenvalues of a symmetric matrix, ascending: Householder (1958) reduction to three diagonals, then implicit QL
 /// with Wilkinson's (1968) shift.
 pub fn eigenvalues(matrix: &[f64], n: usize) -> Vec<f64> {
-    let mut a = matrix.to_vec();
-    let (mut diagonal, mut beside) = (vec![0.0; n], vec![0.0; n]);
-    let mut p = vec![0.0; n];
-    for k in (1..n).rev() {
-        // Row k, left of the diagonal, is turned onto its last element.
-        let scale = a[k * n..k * n + k].iter().fold(0.0, |most: f64, x| most.max(x.abs()));
-        let last = a[k * n + k - 1];
-        if scale == 0.0 || k == 1 {
-            beside[k] = last;
-            diagonal[k] = a[k * n + k];
-            continue;
-        }
-        let norm = a[k * n..k * n + k].iter().map(|x| (x / scale) * (x / scale)).sum::<f64>().sqrt() * scale;
-        let alpha = if last > 0.0 { -norm } else { norm };
-        beside[k] = alpha;
-        diagonal[k] = a[k * n + k];
-        let mut u: Vec<f64> = a[k * n..k * n + k].to_vec();
-        u[k - 1] -= alpha;
-        let half_square = 0.5 * product(&u, &u);
-        if half_square == 0.0 {
-            continue;
-        }
-        for row in 0..k {
-            p[row] = product(&a[row * n..row * n + k], &u) / half_square;
-        }
-        let overlap = product(&p[..k], &u) / (2.0 * half_square);
-        for row in 0..k {
-            p[row] -= overlap * u[row];
-        }
-        for row in 0..k {
-            let (ur, pr) = (u[row], p[row]);
-            for column in 0..k {
-                a[row * n + column] -= ur * p[column] + pr * u[column];
-            }
-        }
-    }
-    if n > 0 {
-        diagonal[0] = a[0];
-    }
+    let (mut diagonal, mut beside) = Algebra::new().tridiagonal(&mut pad(matrix, n), n);
     ql(&mut diagonal, &mut beside);
     diagonal.sort_by(f64::total_cmp);
     diagonal
+}
+
+/// The matrix without what it does along some orthonormal directions, and with `stiffness` along them instead.
+pub fn lift(matrix: &[f64], n: usize, directions: &[Vec<f64>], stiffness: f64) -> Vec<f64> {
+    if n == 0 {
+        return Vec::new();
+    }
+    // P A P + stiffness D D^T with P = 1 - D D^T, as A - D C^T - C D^T with C = A D - D (D^T A D + stiffness) / 2.
+    let width = padded(n);
+    let algebra = Algebra::new();
+    let mut lifted = pad(matrix, n);
+    let columns: Vec<f64> = directions.iter().flat_map(|d| d.iter().copied().chain((n..width).map(|_| 0.0))).collect();
+    let images = algebra.images(&lifted, n, &columns);
+    let mut halves = images.clone();
+    for (number, half) in halves.chunks_exact_mut(width).enumerate() {
+        let image = &images[number * width..][..width];
+        for (other, direction) in columns.chunks_exact(width).enumerate() {
+            let along = product(direction, image) + if other == number { stiffness } else { 0.0 };
+            half.iter_mut().zip(direction).for_each(|(c, d)| *c -= 0.5 * along * d);
+        }
+    }
+    algebra.take_off(&mut lifted, n, &columns, &halves);
+    lifted.chunks_exact(width).flat_map(|row| &row[..n]).copied().collect()
+}
+
+fn pad(matrix: &[f64], n: usize) -> Vec<f64> {
+    let width = padded(n);
+    let mut wide = vec![0.0; n * width];
+    for (wide, row) in wide.chunks_exact_mut(width.max(1)).zip(matrix.chunks_exact(n.max(1))) {
+        wide[..n].copy_from_slice(row);
+    }
+    wide
 }
 
 /// Implicit QL on a matrix of three diagonals; `beside[k]` stands left of `diagonal[k]`.
@@ -259,5 +256,29 @@ mod tests {
         solve(&cholesky(&matrix, n).unwrap(), n, &mut x);
         assert!(x.iter().enumerate().all(|(k, x)| (x - k as f64).abs() < 1e-9));
         assert_eq!(cholesky(&[1.0, 2.0, 2.0, 1.0], 2), None);
+    }
+
+    /// Along the directions there is the new stiffness, and across them what was there.
+    #[test]
+    fn lifted_directions_are_eigenvectors() {
+        for n in [3, 8, 21] {
+            let matrix = random_symmetric(n);
+            let third = (1.0_f64 / 3.0).sqrt();
+            let unit = |places: [usize; 3], signs: [f64; 3]| {
+                let mut direction = vec![0.0; n];
+                (0..3).for_each(|k| direction[places[k]] = third * signs[k]);
+                direction
+            };
+            let directions = [unit([0, 1, 2], [1.0, 1.0, 1.0])];
+            let lifted = lift(&matrix, n, &directions, 7.0);
+            for row in 0..n {
+                let image = lifted[row * n..(row + 1) * n].iter().zip(&directions[0]).map(|(a, d)| a * d).sum::<f64>();
+                assert!((image - 7.0 * directions[0][row]).abs() < 1e-13, "n = {n}, row {row}");
+            }
+            // Across: (1, -1, 0) / sqrt(2) is orthogonal to it.
+            let across = |m: &[f64]| m[0] - m[1] - m[n] + m[n + 1];
+            assert!((across(&lifted) - across(&matrix)).abs() < 1e-13);
+        }
+        assert!(lift(&[], 0, &[], 1.0).is_empty());
     }
 }

@@ -1,18 +1,20 @@
-//! From a start to a minimum: a descent that asks for points and is told values.
+//! From starts to minima: descents that ask for points and are told values.
 //!
-//! Enters: a region, a start, values and gradients. Leaves: an end. Promised: the same answers give the same questions,
-//! bit for bit. Deliberately absent: the objective itself, clocks, threads, and any knowledge of other descents.
+//! Enters: a region, starts, values and gradients in rows of lanes. Leaves: ends. Promised: the same answers give the
+//! same questions, bit for bit, in every lane, beside any neighbours, in every build. Deliberately absent: the objective
+//! itself, clocks, threads, and any knowledge of other descents.
 //!
-//! A [`Descent`] goes down to where values no longer change; a [`Confirmation`] then polishes with exact second
-//! derivatives and tells minima from saddles and flats by the spectrum of stiffnesses.
+//! [`Descents`] go down to where values no longer change; a [`Confirmation`] then polishes with exact second derivatives
+//! and tells minima from saddles and flats by the spectrum of stiffnesses.
 
 mod confirmation;
-mod history;
+mod lane;
 mod linear_algebra;
+mod memory;
 mod quasi_newton;
 mod region;
-mod vectors;
 
 pub use confirmation::{Ask, Confirmation, Judgement};
-pub use quasi_newton::{Descent, End, EndKind, Progress};
+pub use lane::EndKind;
+pub use quasi_newton::{Descents, End};
 pub use region::Region;

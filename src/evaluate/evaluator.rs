@@ -30,37 +30,81 @@ impl Evaluator {
         self.kernel.n_unknowns
     }
 
+    /// Gets a machine with at least so many lanes (at most [`MAX_LANES`]) ready; gives its width. Fill
+    /// [`Evaluator::points_mut`], [`Evaluator::run`], then read the answers.
+    pub fn prepare(&mut self, lanes: usize) -> usize {
+        debug_assert!(lanes <= MAX_LANES);
+        self.last = WIDTHS.iter().position(|&width| lanes <= width).unwrap_or(WIDTHS.len() - 1);
+        let width = WIDTHS[self.last];
+        self.gradient[self.last].get_or_insert_with(|| LaneMachine::new(&self.kernel.gradient, width));
+        width
+    }
+
+    /// The points of the machine that is ready: a row for each unknown, one number a lane.
+    pub fn points_mut(&mut self) -> &mut [f64] {
+        self.gradient[self.last].as_mut().map_or(&mut [], |machine| machine.rows_mut(Role::Unknowns))
+    }
+
+    /// The same, to read.
+    pub fn points(&self) -> &[f64] {
+        self.rows(Role::Unknowns)
+    }
+
+    /// Evaluates all lanes of the machine that is ready.
+    pub fn run(&mut self) {
+        if let Some(machine) = &mut self.gradient[self.last] {
+            machine.run();
+        }
+    }
+
+    /// The values, one a lane.
+    pub fn values(&self) -> &[f64] {
+        self.rows(Role::Value)
+    }
+
+    /// The gradients: a row for each unknown, one number a lane.
+    pub fn gradients(&self) -> &[f64] {
+        self.rows(Role::Gradient)
+    }
+
+    fn rows(&self, role: Role) -> &[f64] {
+        self.gradient[self.last].as_ref().map_or(&[], |machine| machine.rows(role))
+    }
+
+    /// Writes a point into a lane.
+    pub fn put(&mut self, lane: usize, point: &[f64]) {
+        let width = WIDTHS[self.last];
+        for (row, &value) in self.points_mut().chunks_exact_mut(width).zip(point) {
+            row[lane] = value;
+        }
+    }
+
+    /// The point in a lane.
+    pub fn point(&self, lane: usize) -> Vec<f64> {
+        self.points().chunks_exact(WIDTHS[self.last]).map(|row| row[lane]).collect()
+    }
+
     /// Evaluates `count` points (at most [`MAX_LANES`], at least 1); `point(k)` is the k-th, of one number per unknown.
     /// Read the answers with [`Evaluator::value`] and [`Evaluator::read_gradient`] before the next call.
     pub fn evaluate<'a>(&mut self, count: usize, point: impl Fn(usize) -> &'a [f64]) {
-        debug_assert!(1 <= count && count <= MAX_LANES);
-        let place = WIDTHS.iter().position(|&width| count <= width).unwrap_or(WIDTHS.len() - 1);
-        let width = WIDTHS[place];
-        self.last = place;
-        let machine = self.gradient[place].get_or_insert_with(|| LaneMachine::new(&self.kernel.gradient, width));
-        let rows = machine.rows_mut(Role::Unknowns);
+        let width = self.prepare(count);
         for lane in 0..width {
             // Idle lanes repeat the first point: a usual one, which cannot be slow by being subnormal or infinite.
-            let values = point(if lane < count { lane } else { 0 });
-            for (slot, &value) in values.iter().enumerate() {
-                rows[slot * width + lane] = value;
-            }
+            self.put(lane, point(if lane < count { lane } else { 0 }));
         }
-        machine.run();
+        self.run();
     }
 
     /// The value of the k-th point of the last call.
     pub fn value(&self, k: usize) -> f64 {
-        self.gradient[self.last].as_ref().map_or(f64::NAN, |machine| machine.rows(Role::Value)[k])
+        self.values().get(k).copied().unwrap_or(f64::NAN)
     }
 
     /// Writes the gradient at the k-th point of the last call.
     pub fn read_gradient(&self, k: usize, gradient: &mut [f64]) {
-        let Some(machine) = &self.gradient[self.last] else { return };
-        let rows = machine.rows(Role::Gradient);
         let width = WIDTHS[self.last];
-        for (slot, entry) in gradient.iter_mut().enumerate() {
-            *entry = rows[slot * width + k];
+        for (row, entry) in self.gradients().chunks_exact(width).zip(gradient) {
+            *entry = row[k];
         }
     }
 

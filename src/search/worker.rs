@@ -3,7 +3,7 @@
 use std::sync::Arc;
 use std::sync::mpsc::Sender;
 
-use crate::descent::{Ask, Confirmation, Descent, End, EndKind, Judgement, Progress, Region};
+use crate::descent::{Ask, Confirmation, Descents, End, EndKind, Judgement, Region};
 use crate::evaluate::Evaluator;
 use crate::kernel::Kernel;
 use crate::ledger::{Candidate, Confirmed, Identity, Kind};
@@ -17,6 +17,12 @@ use super::task::{Finding, Lost, Task, TaskResult, Work};
 
 /// Tasks that a worker has in hand at once.
 const LANES: usize = 32;
+
+/// Lanes of the narrowest machine that descents can read.
+const LEAST_LANES: usize = 8;
+
+/// Results held back at most while there is work.
+const MOST_HELD: usize = 8;
 
 /// Times that a cloud at its bounds is brought back to the middle within one descent.
 const MOST_RECENTRINGS: u32 = 3;
@@ -54,14 +60,13 @@ impl Workshop {
 pub struct Worker<'a> {
     shop: &'a Workshop,
     evaluator: Evaluator,
-    benches: Vec<Bench>,
+    /// The descent of each place.
+    descents: Descents,
+    /// The task of each place.
+    jobs: Vec<Option<Job>>,
+    /// How often the queue had been cleared when last looked at.
+    clearings: u64,
     gradient: Vec<f64>,
-}
-
-/// A place for one task.
-struct Bench {
-    descent: Descent,
-    job: Option<Job>,
 }
 
 /// A task in hand.
@@ -99,60 +104,101 @@ enum Stage {
 impl<'a> Worker<'a> {
     /// A worker in a workshop.
     pub fn new(shop: &'a Workshop) -> Self {
-        let benches = (0..LANES)
-            .map(|_| Bench { descent: Descent::new(&shop.region, shop.most_evaluations()), job: None })
-            .collect();
-        let gradient = vec![0.0; shop.structure.n_unknowns()];
-        Worker { shop, evaluator: Evaluator::new(&shop.kernel), benches, gradient }
+        Worker {
+            shop,
+            evaluator: Evaluator::new(&shop.kernel),
+            descents: Descents::new(&shop.region, LANES, shop.most_evaluations()),
+            jobs: (0..LANES).map(|_| None).collect(),
+            clearings: 0,
+            gradient: vec![0.0; shop.structure.n_unknowns()],
+        }
     }
 
     /// Works until the queue is closed and empty, or nobody listens.
     pub fn work(&mut self, queue: &Queue, results: &Sender<TaskResult>) {
         let mut taken = Vec::new();
+        let mut finished = Vec::new();
+        let mut n_busy = 0;
         loop {
-            let n_idle = self.benches.iter().filter(|bench| bench.job.is_none()).count();
-            if n_idle > 0 {
-                let clearings = queue.take(n_idle, n_idle == LANES, &mut taken);
+            if n_busy < LANES {
+                if n_busy == 0 && !send(&mut finished, results) {
+                    return;
+                }
+                let clearings = queue.take(LANES - n_busy, n_busy == 0, &mut taken);
+                n_busy += taken.len();
                 for task in taken.drain(..) {
                     self.begin(task, clearings);
                 }
+                // A result wakes the thread that merges, which costs more than a hundred evaluations of a small
+                // landscape; but nothing is held back while that thread may have to draw up more.
+                if (n_busy < LANES || finished.len() >= MOST_HELD) && !send(&mut finished, results) {
+                    return;
+                }
             }
             let clearings = queue.clearings();
-            for bench in &mut self.benches {
-                bench.job.take_if(|job| job.clearings < clearings);
+            if clearings != self.clearings {
+                self.clearings = clearings;
+                n_busy -= self.drop_cleared();
             }
-            if self.benches.iter().all(|bench| bench.job.is_none()) {
+            if n_busy == 0 {
                 if queue.is_done() {
                     return;
                 }
                 continue;
             }
-            self.advance();
-            for place in 0..self.benches.len() {
-                if let Some(result) = self.harvest(place)
-                    && results.send(result).is_err()
-                {
-                    return;
-                }
+            self.draw_together(n_busy);
+            let n_over = self.advance();
+            if n_over > 0 {
+                let before = finished.len();
+                finished.extend((0..LANES).filter_map(|place| self.harvest(place)));
+                n_busy -= finished.len() - before;
             }
         }
     }
 
+    /// Moves what is left of a batch to the front, so that a narrow machine serves it.
+    fn draw_together(&mut self, n_busy: usize) {
+        let width = if n_busy <= LEAST_LANES { LEAST_LANES } else { LANES / 2 };
+        if n_busy > width {
+            return;
+        }
+        for place in width..LANES {
+            if self.jobs[place].is_some()
+                && let Some(free) = self.jobs[..width].iter().position(Option::is_none)
+            {
+                self.jobs.swap(place, free);
+                self.descents.shift(place, free);
+            }
+        }
+    }
+
+    /// Drops the tasks that were taken before the queue was last cleared; says how many.
+    fn drop_cleared(&mut self) -> usize {
+        let mut n_dropped = 0;
+        for (place, job) in self.jobs.iter_mut().enumerate() {
+            if job.take_if(|job| job.clearings < self.clearings).is_some() {
+                self.descents.leave(place);
+                n_dropped += 1;
+            }
+        }
+        n_dropped
+    }
+
     fn begin(&mut self, task: Task, clearings: u64) {
-        let Some(bench) = self.benches.iter_mut().find(|bench| bench.job.is_none()) else { return };
+        let Some(place) = self.jobs.iter().position(Option::is_none) else { return };
         let shop = self.shop;
         let mut stage = Stage::None;
         let confirmation = match &task.work {
             Work::Confirm { at, .. } => Some(Confirmation::new(&shop.region, at)),
             Work::Descend { heuristic, proposal, .. } => {
                 match start::begin(&shop.structure, shop.seed, &task, *heuristic, proposal) {
-                    Beginning::Descent(start) => bench.descent.start(&start),
+                    Beginning::Descent(start) => self.descents.start(place, &start),
                     Beginning::Chain(chain) => stage = Stage::Chain(chain),
                 }
                 None
             }
         };
-        bench.job = Some(Job {
+        self.jobs[place] = Some(Job {
             task,
             clearings,
             evaluations: 0,
@@ -168,91 +214,80 @@ impl<'a> Worker<'a> {
         });
     }
 
-    /// One evaluation, or one matrix, for every task in hand.
-    fn advance(&mut self) {
-        let shop = self.shop;
-        let mut asked: Vec<usize> = Vec::with_capacity(LANES);
-        for (place, bench) in self.benches.iter_mut().enumerate() {
-            let Some(job) = &mut bench.job else { continue };
-            let Some(confirmation) = &mut job.confirmation else {
-                asked.push(place);
-                continue;
-            };
-            if confirmation.judgement().is_some() {
-                continue;
+    /// One evaluation, or one matrix, for every task in hand; says how many wait to be harvested.
+    fn advance(&mut self) -> usize {
+        // Tasks that ask by themselves.
+        let mut n_asking = 0;
+        let mut n_lanes = LEAST_LANES;
+        for (place, job) in self.jobs.iter_mut().enumerate() {
+            let Some(job) = job else { continue };
+            // Free places are taken from the front, so a narrow machine serves while there is little to do.
+            n_lanes = n_lanes.max(place + 1);
+            n_asking += usize::from(!matches!(job.stage, Stage::None));
+            let Some(confirmation) = &mut job.confirmation else { continue };
+            n_asking += 1;
+            if let Ask::Curvature(at) = confirmation.ask() {
+                let matrix = self.evaluator.curvature(at);
+                // A matrix takes one pass for each unknown.
+                job.evaluations += at.len() as u64;
+                confirmation.tell_curvature(&matrix);
             }
-            match confirmation.ask() {
-                Ask::Gradient(_) => asked.push(place),
-                Ask::Curvature(at) => {
-                    let matrix = self.evaluator.curvature(at);
-                    // A matrix takes one pass for each unknown.
-                    job.evaluations += at.len() as u64;
-                    confirmation.tell_curvature(&matrix);
+        }
+        self.evaluator.prepare(n_lanes);
+        self.descents.ask(self.evaluator.points_mut());
+        if n_asking > 0 {
+            for (place, job) in self.jobs.iter().enumerate() {
+                if let Some(at) = job.as_ref().and_then(Job::asks) {
+                    self.evaluator.put(place, at);
                 }
             }
         }
-        if asked.is_empty() {
-            return;
-        }
-        let benches = &self.benches;
-        let point = |k: usize| {
-            let bench: &Bench = &benches[asked[k]];
-            match bench.job.as_ref().map(|job| &job.stage) {
-                Some(Stage::Chain(chain)) => return chain.ask(),
-                Some(Stage::Filling(filling)) => return filling.ask(),
-                _ => {}
-            }
-            match bench.job.as_ref().and_then(|job| job.confirmation.as_ref()).map(Confirmation::ask) {
-                Some(Ask::Gradient(at)) => at,
-                _ => bench.descent.ask(),
-            }
-        };
-        self.evaluator.evaluate(asked.len(), point);
-        for (k, &place) in asked.iter().enumerate() {
-            let value = self.evaluator.value(k);
-            self.evaluator.read_gradient(k, &mut self.gradient);
-            let bench = &mut self.benches[place];
-            let Some(job) = &mut bench.job else { continue };
-            job.evaluations += 1;
-            if !value.is_finite() {
-                job.outside += 1;
-                if job.first_outside.is_none() {
-                    let at = match &job.stage {
-                        Stage::Chain(chain) => chain.ask(),
-                        Stage::Filling(filling) => filling.ask(),
-                        Stage::None => bench.descent.ask(),
-                    };
-                    job.first_outside = Some(at.to_vec());
+        self.evaluator.run();
+        let evaluator = &self.evaluator;
+        self.descents.tell(evaluator.points(), evaluator.values(), evaluator.gradients());
+        let mut n_over = 0;
+        for (place, (job, &value)) in self.jobs.iter_mut().zip(evaluator.values()).enumerate() {
+            let Some(job) = job else { continue };
+            // Not where it is judged, or its turn for a matrix comes.
+            if job.confirmation.is_none() || job.asks().is_some() {
+                job.evaluations += 1;
+                if !value.is_finite() {
+                    job.outside += 1;
+                    job.first_outside.get_or_insert_with(|| evaluator.point(place));
                 }
-            }
-            if job.tell_stage(value, &mut bench.descent, shop) {
-                continue;
-            }
-            match &mut job.confirmation {
-                Some(confirmation) => confirmation.tell_gradient(value, &self.gradient),
-                None => {
-                    if bench.descent.tell(value, &self.gradient) == Progress::Ended {
-                        job.descent_ended(&mut bench.descent, shop);
-                    } else if let Work::Descend { ceiling, .. } = job.task.work {
-                        job.abandoned = bench.descent.outlook() > ceiling;
+                if !job.tell_stage(value, &mut self.descents, place, self.shop) {
+                    match &mut job.confirmation {
+                        Some(confirmation) => {
+                            evaluator.read_gradient(place, &mut self.gradient);
+                            confirmation.tell_gradient(value, &self.gradient);
+                        }
+                        None if self.descents.has_ended(place) => {
+                            job.descent_ended(&mut self.descents, place, self.shop);
+                        }
+                        None => {
+                            if let Work::Descend { ceiling, .. } = job.task.work {
+                                job.abandoned = self.descents.outlook(place) > ceiling;
+                            }
+                        }
                     }
                 }
             }
+            n_over += usize::from(job.is_over(&self.descents, place));
         }
+        n_over
     }
 
-    /// The result of a bench whose task has ended.
+    /// The result of a place whose task has ended.
     fn harvest(&mut self, place: usize) -> Option<TaskResult> {
         let shop = self.shop;
-        let bench = &mut self.benches[place];
-        let job = bench.job.as_mut()?;
+        let job = self.jobs[place].as_mut()?;
         let finding = match (&job.task.work, &job.confirmation) {
             (Work::Descend { heuristic, mark, .. }, _) => {
                 let (heuristic, mark) = (*heuristic, *mark);
-                if !matches!(job.stage, Stage::None) || !(job.abandoned || bench.descent.has_ended()) {
+                if !matches!(job.stage, Stage::None) || !(job.abandoned || self.descents.has_ended(place)) {
                     return None;
                 }
-                let end = job.best.take().unwrap_or_else(|| bench.descent.end());
+                let end = job.best.take().unwrap_or_else(|| self.descents.end(place));
                 let met = |kinked| {
                     let candidate = Candidate::new(&shop.identity, end.value, end.at.clone().into(), kinked);
                     Finding::Met { heuristic, mark, candidate }
@@ -268,12 +303,13 @@ impl<'a> Worker<'a> {
             }
             (Work::Confirm { .. }, None) => {
                 // The descent away from a saddle is under way.
-                if !bench.descent.has_ended() {
+                if !self.descents.has_ended(place) {
                     return None;
                 }
-                let end = bench.descent.end();
+                let end = self.descents.end(place);
                 if end.kind == EndKind::Converged && job.saddles <= MOST_SADDLES {
                     job.confirmation = Some(Confirmation::new(&shop.region, &end.at));
+                    self.descents.leave(place);
                     return None;
                 }
                 Finding::Dismissed { entry: job.entry()? }
@@ -282,7 +318,7 @@ impl<'a> Worker<'a> {
                 Judgement::Failed => Finding::Dismissed { entry: *entry },
                 Judgement::Saddle { escape } => {
                     job.saddles += 1;
-                    bench.descent.start(escape);
+                    self.descents.start(place, escape);
                     job.confirmation = None;
                     return None;
                 }
@@ -304,7 +340,8 @@ impl<'a> Worker<'a> {
                 }
             },
         };
-        let job = bench.job.take()?;
+        let job = self.jobs[place].take()?;
+        self.descents.leave(place);
         Some(TaskResult {
             round: job.task.round,
             number: job.task.number,
@@ -317,7 +354,33 @@ impl<'a> Worker<'a> {
     }
 }
 
+/// Sends all results; `false` when nobody listens.
+fn send(finished: &mut Vec<TaskResult>, results: &Sender<TaskResult>) -> bool {
+    finished.drain(..).all(|result| results.send(result).is_ok())
+}
+
 impl Job {
+    /// The point that it asks for by itself; none while a descent is under way, or a matrix is wanted.
+    fn asks(&self) -> Option<&[f64]> {
+        match &self.stage {
+            Stage::Chain(chain) => return Some(chain.ask()),
+            Stage::Filling(filling) => return Some(filling.ask()),
+            Stage::None => {}
+        }
+        match self.confirmation.as_ref().filter(|confirmation| confirmation.judgement().is_none())?.ask() {
+            Ask::Gradient(at) => Some(at),
+            Ask::Curvature(_) => None,
+        }
+    }
+
+    /// Whether there is something to harvest.
+    fn is_over(&self, descents: &Descents, place: usize) -> bool {
+        match &self.confirmation {
+            Some(confirmation) => confirmation.judgement().is_some(),
+            None => matches!(self.stage, Stage::None) && (self.abandoned || descents.has_ended(place)),
+        }
+    }
+
     fn entry(&self) -> Option<crate::ledger::EntryId> {
         match self.task.work {
             Work::Confirm { entry, .. } => Some(entry),
@@ -326,13 +389,13 @@ impl Job {
     }
 
     /// A value for a chain or a filling, if there is one; their ends start a descent.
-    fn tell_stage(&mut self, value: f64, descent: &mut Descent, shop: &Workshop) -> bool {
+    fn tell_stage(&mut self, value: f64, descents: &mut Descents, place: usize, shop: &Workshop) -> bool {
         match &mut self.stage {
             Stage::None => return false,
             Stage::Chain(chain) => {
                 chain.tell(&shop.structure, value);
                 if chain.has_ended() {
-                    descent.start(chain.result());
+                    descents.start(place, chain.result());
                     self.stage = Stage::None;
                 }
             }
@@ -341,7 +404,7 @@ impl Job {
                 if filling.has_ended() {
                     if let Some(at) = filling.result() {
                         self.fillings.1 += 1;
-                        descent.start(at);
+                        descents.start(place, at);
                     }
                     self.stage = Stage::None;
                 }
@@ -351,14 +414,14 @@ impl Job {
     }
 
     /// A cloud that drifted against its box is put back into the middle, and goes on; then its empty places are filled.
-    fn descent_ended(&mut self, descent: &mut Descent, shop: &Workshop) {
-        let end = descent.end();
+    fn descent_ended(&mut self, descents: &mut Descents, place: usize, shop: &Workshop) {
+        let end = descents.end(place);
         if end.kind == EndKind::Converged
             && self.recentrings < MOST_RECENTRINGS
             && let Some(moved) = shop.region.recentre(&end.at)
         {
             self.recentrings += 1;
-            descent.start(&moved);
+            descents.start(place, &moved);
             return;
         }
         let Work::Descend { fill: true, .. } = self.task.work else { return };

@@ -1,11 +1,11 @@
-//! Descents and confirmations on compiled landscapes, one at a time.
+//! Descents and confirmations on compiled landscapes.
 
 use std::sync::Arc;
 
 use super::support::kernel;
 use rand::RngExt;
 use thalweg::base::random::{Purpose, stream};
-use thalweg::descent::{Ask, Confirmation, Descent, End, EndKind, Judgement, Progress, Region};
+use thalweg::descent::{Ask, Confirmation, Descents, End, EndKind, Judgement, Region};
 use thalweg::evaluate::Evaluator;
 use thalweg::landscape::Landscape;
 
@@ -17,14 +17,15 @@ fn start(landscape: &Landscape, number: u64) -> Vec<f64> {
 
 /// The end of a descent and its evaluations.
 fn descend(evaluator: &mut Evaluator, region: &Arc<Region>, start: &[f64]) -> (End, u64) {
-    let mut descent = Descent::new(region, 20_000);
-    descent.start(start);
-    loop {
-        let (value, gradient) = evaluator.value_and_gradient(descent.ask());
-        if descent.tell(value, &gradient) == Progress::Ended {
-            return (descent.end(), descent.evaluations());
-        }
+    let mut descents = Descents::new(region, 8, 20_000);
+    descents.start(0, start);
+    evaluator.prepare(8);
+    while !descents.has_ended(0) {
+        descents.ask(evaluator.points_mut());
+        evaluator.run();
+        descents.tell(evaluator.points(), evaluator.values(), evaluator.gradients());
     }
+    (descents.end(0), descents.evaluations(0))
 }
 
 fn confirm(evaluator: &mut Evaluator, region: &Arc<Region>, at: &[f64]) -> Judgement {

@@ -13,11 +13,15 @@
 //! - `code`: the flat code and how it is made.
 //! - `compound`: innermost loops made faster; `lives`: what they must leave behind.
 //! - `run`: the loop over it, in three builds.
+//! - [`algebra`]: vector algebra for descents, over rows like those of a machine.
+//! - [`dense`]: symmetric matrices, for the spectra of confirmations.
 
 #[cfg(test)]
 mod agreement;
+pub mod algebra;
 mod code;
 mod compound;
+pub mod dense;
 mod lives;
 mod run;
 
