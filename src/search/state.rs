@@ -22,8 +22,10 @@ use super::task::{Finding, Proposal, Task, TaskResult, Work};
 /// Tasks of the first rounds. Small, so that walks get deep early; the rounds grow with the evaluations spent, since many
 /// threads need many tasks and by then depth is cheap.
 const FIRST_ROUND: f64 = 4.0;
-/// A round spends about this part of the evaluations so far.
-const ROUND_SHARE: f64 = 0.01;
+/// Tasks that each descent so far adds to a round: a round is about a hundredth of what came before.
+const GROWTH: f64 = 0.012;
+/// Tasks of a round where no heuristic learns from what was met: nothing is gained by small ones, and lanes stay full.
+const UNLED_ROUND: f64 = 128.0;
 /// The most tasks of a round.
 const LARGEST_ROUND: f64 = 2048.0;
 
@@ -269,8 +271,10 @@ impl Hunt {
     }
 
     fn round_size(&self) -> usize {
-        let usual = self.schedule().usual_cost(Heuristic::Hop).max(1.0);
-        (ROUND_SHARE * self.evaluations() as f64 / usual).clamp(FIRST_ROUND, LARGEST_ROUND) as usize
+        let descents: u64 = self.schedule().descents().iter().sum();
+        let unled = |&(heuristic, _): &(Heuristic, f64)| heuristic == Heuristic::Multistart;
+        let first = if self.settings.mix.members().iter().all(unled) { UNLED_ROUND } else { FIRST_ROUND };
+        (first + GROWTH * descents as f64).min(LARGEST_ROUND) as usize
     }
 
     /// Whether another task fits into the budget, by what tasks usually cost: a small budget is not overrun by a whole
