@@ -33,7 +33,9 @@ const LARGEST_ROUND: f64 = 2048.0;
 /// being met.
 const WORTH_LOWEST: f64 = 5.0;
 /// Descents without a lower value after which rank counts half as much, in the exponent.
-const LISTING: f64 = 4000.0;
+const LISTING: f64 = 1000.0;
+/// Uniform starts over which the share that meets something known is followed.
+const FOLLOWED: f64 = 200.0;
 /// Lower minima that are counted for that.
 const RANKED: usize = 200;
 
@@ -58,6 +60,8 @@ pub struct Hunt {
     rounds_merged: u64,
     /// The evaluations after which the lowest value so far was met.
     last_lower: u64,
+    /// The share of uniform starts of late that met a minimum known before.
+    known_share: f64,
     /// Descents that had ended by then.
     last_lower_descents: u64,
     /// Descents of the survey before which its coverage is not worked out again.
@@ -77,6 +81,7 @@ impl Hunt {
             given_drawn: 0,
             rounds_merged: 0,
             last_lower: 0,
+            known_share: 0.0,
             last_lower_descents: 0,
             next_coverage: 1,
             settings,
@@ -161,6 +166,9 @@ impl Hunt {
                     if met.new {
                         self.met.push(met.entry);
                     }
+                    if matches!(heuristic, Heuristic::Survey | Heuristic::Multistart) {
+                        self.known_share += (f64::from(u8::from(!met.new)) - self.known_share) / FOLLOWED;
+                    }
                     let worth = if met.new { self.worth(met.entry) } else { 0.0 };
                     self.arrive(heuristic, mark, Some(met.entry), worth, &result_key, result.evaluations);
                 }
@@ -213,10 +221,12 @@ impl Hunt {
             RANKED => self.ledger.len() as f64,
             lower => (1 + lower) as f64,
         };
-        // The longer nothing lower has been met, the more a new minimum is worth wherever it lies: the hunt turns to listing.
+        // Where uniform starts meet hardly anything new, and nothing lower has come for long, a new minimum is worth as much
+        // wherever it lies: the hunt turns to listing. In a landscape without end it never does.
         let descents: u64 = self.schedule().descents().iter().sum();
         let quiet = (descents - self.last_lower_descents) as f64;
-        let flatness = quiet / (quiet + LISTING);
+        let known = self.known_share * self.known_share;
+        let flatness = known * known * quiet / (quiet + LISTING);
         functions::real_power(rank, flatness - 1.0)
     }
 

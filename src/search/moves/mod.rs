@@ -56,7 +56,7 @@ impl Move {
                 (Move::All, 0.2),
                 (Move::Redraw, 0.05),
             ],
-            (false, false) => vec![(Move::Shake, 0.75), (Move::Relocate, 0.25)],
+            (false, false) => vec![(Move::Shake, 0.7), (Move::Relocate, 0.3)],
             (false, true) => vec![(Move::Shake, 0.5), (Move::Relocate, 0.25), (Move::Swap, 0.25)],
         }
     }
