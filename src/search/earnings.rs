@@ -78,8 +78,9 @@ impl Earnings {
                 return 0.0;
             }
             let rate = (account.reward + common * self.trust) / (account.spent + self.trust);
-            // The first bets fade with age; what is left is what was earned.
-            functions::real_power(account.beginning, 1.0 - self.age) * rate
+            // By the square of the rate: in proportion alone, who earns twice as much would get but twice the share. The
+            // first bets fade with age; what is left is what was earned.
+            functions::real_power(account.beginning, 1.0 - self.age) * rate * rate
         };
         let total: f64 = self.accounts.iter().map(score).sum();
         let floor = |account: &Account| (1.0 - self.age) * EARLY_FLOOR * account.beginning + self.age * account.hedge;
