@@ -26,7 +26,7 @@ const NAMES: [&str; WAYS as usize] = ["walk", "tempered", "departure", "symmetri
 const WAYS: u64 = 4;
 /// Their shares at the beginning and the least of a long hunt, without and with clouds.
 const GENERAL: [(f64, f64); WAYS as usize] = [(0.86, 0.25), (0.08, 0.12), (0.06, 0.1), (0.0, 0.0)];
-const CLOUD: [(f64, f64); WAYS as usize] = [(0.0, 0.0), (0.35, 0.12), (0.15, 0.1), (0.5, 0.15)];
+const CLOUD: [(f64, f64); WAYS as usize] = [(0.0, 0.0), (0.35, 0.1), (0.15, 0.1), (0.5, 0.12)];
 /// Descents that each way is trusted with at first.
 const TRUST: f64 = 30.0;
 /// How many of the lowest minima are models for the size of symmetric starts.
