@@ -121,12 +121,7 @@ struct Crew<'a> {
 }
 
 impl Crew<'_> {
-    fn run(
-        &mut self,
-        state: &mut Hunt,
-        observer: &mut dyn Observer,
-        past: &mut dyn Past,
-    ) -> Result<Ending, HuntError> {
+    fn run(&mut self, state: &mut Hunt, observer: &mut dyn Observer, past: &mut dyn Past) -> Result<Ending, HuntError> {
         let n_past = past.rounds();
         for round in 0..IN_FLIGHT {
             self.draw(round, state, n_past);

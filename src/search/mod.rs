@@ -31,8 +31,6 @@ pub mod task;
 pub mod worker;
 
 pub use hunt::{hunt, resume};
-pub use outcome::{
-    Ending, HuntError, NoPast, Observer, Outcome, Past, PastRound, RoundReport, Troubles, Verdict,
-};
+pub use outcome::{Ending, HuntError, NoPast, Observer, Outcome, Past, PastRound, RoundReport, Troubles, Verdict};
 pub use record::{BadRecord, Found, RoundRecord, TaskRecord};
 pub use settings::{Heuristic, Mix, Settings};

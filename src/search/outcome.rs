@@ -184,7 +184,9 @@ impl std::fmt::Display for HuntError {
                 "round {round} as it was recorded does not follow from the settings and the rounds before; the record was made \
                  by another version of the program or for other settings"
             ),
-            HuntError::GivenUp => write!(out, "interrupted while the recorded rounds were taken in; nothing was changed"),
+            HuntError::GivenUp => {
+                write!(out, "interrupted while the recorded rounds were taken in; nothing was changed")
+            }
         }
     }
 }

@@ -313,8 +313,12 @@ mod tests {
         );
         let (number, place) = (number(), numbers());
         prop_oneof![
-            (number, place, any::<bool>(), any::<bool>())
-                .prop_map(|(value, at, kinked, lower)| Found::New { value, at: at.into(), kinked, lower }),
+            (number, place, any::<bool>(), any::<bool>()).prop_map(|(value, at, kinked, lower)| Found::New {
+                value,
+                at: at.into(),
+                kinked,
+                lower
+            }),
             (proptest::collection::vec(any::<u32>(), 1..4), any::<bool>(), any::<bool>()).prop_map(
                 |(same, kinked, lower)| Found::Known { same: same.into_iter().map(EntryId).collect(), kinked, lower }
             ),
