@@ -229,10 +229,25 @@ impl Problem {
         threads: usize,
         observer: &mut dyn search::Observer,
     ) -> Result<search::Outcome, Failure> {
-        search::hunt(&self.landscape, &self.kernel, settings, threads, observer).map_err(|error| {
+        self.resume(settings, threads, observer, &mut search::NoPast)
+    }
+
+    /// Goes on with a hunt whose first rounds were recorded; the result is that of a hunt that was never interrupted.
+    ///
+    /// # Errors
+    /// As [`Problem::hunt`]; also where the records do not follow from the settings.
+    pub fn resume(
+        &self,
+        settings: &search::Settings,
+        threads: usize,
+        observer: &mut dyn search::Observer,
+        past: &mut dyn search::Past,
+    ) -> Result<search::Outcome, Failure> {
+        search::resume(&self.landscape, &self.kernel, settings, threads, observer, past).map_err(|error| {
             let blame = match error {
-                search::HuntError::Threads(_) => Blame::Outside,
+                search::HuntError::Threads(_) | search::HuntError::GivenUp => Blame::Outside,
                 search::HuntError::Worker => Blame::Program,
+                search::HuntError::Past(_) => Blame::Input,
             };
             Failure::new(blame, error.to_string())
         })

@@ -7,7 +7,7 @@ use clap::{Parser, Subcommand};
 use thalweg::{Blame, Failure};
 
 use super::screen::{say, warn};
-use super::{check, hunt, minima};
+use super::{check, hunt, minima, resume};
 
 /// Hunts the lowest point of a rugged landscape, and keeps every distinct minimum that it meets.
 #[derive(Parser)]
@@ -15,7 +15,7 @@ use super::{check, hunt, minima};
     name = "thalweg",
     version,
     disable_help_subcommand = true,
-    after_help = "Usual calls:\n  thalweg check pore.land               is the problem sound, and what does it cost?\n  thalweg hunt pore.land --for 8h       search overnight on all cores\n  thalweg minima results/pore           the distinct minima of a run"
+    after_help = "Usual calls:\n  thalweg check pore.land               is the problem sound, and what does it cost?\n  thalweg hunt pore.land --for 8h       search overnight on all cores\n  thalweg resume results/pore           go on with a hunt that was interrupted\n  thalweg minima results/pore           the distinct minima of a run"
 )]
 struct Typed {
     #[command(subcommand)]
@@ -28,6 +28,8 @@ enum Command {
     Check(check::Check),
     /// Searches until its budget is spent, and leaves a run folder
     Hunt(hunt::Hunt),
+    /// Goes on with a hunt that was interrupted, or with a larger budget
+    Resume(resume::Resume),
     /// Shows the distinct minima of a run
     Minima(minima::Minima),
 }
@@ -64,6 +66,7 @@ fn run() -> ExitCode {
     let end = match typed.command {
         Command::Check(check) => check.run(),
         Command::Hunt(hunt) => hunt.run(),
+        Command::Resume(resume) => resume.run(),
         Command::Minima(minima) => minima.run(),
     };
     match end.and_then(|end| say(&end.text).map(|()| end.status)) {

@@ -22,6 +22,8 @@ pub(crate) struct Display {
     allowed_evaluations: Option<u64>,
     sign: f64,
     lowest: Option<Lowest>,
+    /// Evaluations of earlier sessions.
+    before: u64,
 }
 
 enum Way {
@@ -50,7 +52,7 @@ impl Display {
         } else {
             Way::Plain(FIRST_PLAIN)
         };
-        Display { way, began: Instant::now(), allowed, allowed_evaluations, sign, lowest: None }
+        Display { way, began: Instant::now(), allowed, allowed_evaluations, sign, lowest: None, before: 0 }
     }
 
     /// Shows the state after a round.
@@ -80,6 +82,28 @@ impl Display {
         }
     }
 
+    /// Shows that a recorded round was taken in; the time counts from the last of them on.
+    pub(crate) fn replayed(&mut self, report: &RoundReport<'_>) {
+        self.before = report.evaluations;
+        self.began = Instant::now();
+        if let Way::Live(bar, last) = &mut self.way
+            && last.elapsed() >= RENEWED
+        {
+            *last = Instant::now();
+            let evaluations = rounded(report.evaluations as f64);
+            bar.set_message(format!("reading the journal: {} rounds, {evaluations} evaluations", report.round + 1));
+            bar.tick();
+        }
+    }
+
+    /// Tells something at once that is not to be overlooked, even where nothing else is shown.
+    pub(crate) fn tell(&self, text: &str) {
+        match &self.way {
+            Way::Live(bar, _) => bar.suspend(|| warn(text)),
+            Way::Silent | Way::Plain(_) => warn(text),
+        }
+    }
+
     /// Takes the lines away.
     pub(crate) fn finish(&self) {
         if let Way::Live(bar, _) = &self.way {
@@ -100,7 +124,7 @@ impl Display {
             None => clock(elapsed),
         };
         let of = self.allowed_evaluations.map_or_else(String::new, |most| format!(" of {}", rounded(most as f64)));
-        let rate = report.evaluations as f64 / elapsed.as_secs_f64().max(1e-3);
+        let rate = report.evaluations.saturating_sub(self.before) as f64 / elapsed.as_secs_f64().max(1e-3);
         let evaluations = rounded(report.evaluations as f64);
         let mut lines = vec![format!("{time}  {evaluations}{of} evaluations, {} a second", rounded(rate))];
         if let Some(lowest) = &self.lowest {

@@ -1,49 +1,31 @@
 //! `hunt`: search until the budget is spent, and leave a run folder.
 
-use std::collections::BTreeMap;
 use std::path::{Path, PathBuf};
-use std::sync::Arc;
-use std::sync::atomic::{AtomicU32, Ordering};
-use std::time::{Duration, Instant};
+use std::time::Duration;
 
 use clap::Args;
-use thalweg::report::{
-    HuntFacts, JournalEntry, LedgerView, MinimaFile, RunEnd, RunFile, RunMachine, RunSettings, minima_csv, minima_text,
-    read_minima_file, run_format, write_minima_file,
-};
-use thalweg::run::{Journal, RunFolder, Wanted, demand_valid_name, stem};
-use thalweg::search::{Ending, Heuristic, Mix, Observer, Outcome, RoundReport, Settings, Verdict};
+use thalweg::report::{RunFile, RunSettings, read_minima_file, run_format};
+use thalweg::run::{RunFolder, Wanted, demand_valid_name, stem};
+use thalweg::search::{Mix, NoPast, Settings};
 use thalweg::{Blame, Failure, Problem, read_bytes};
 
+use super::budget::Budget;
 use super::command::End;
-use super::display::Display;
-use super::screen::{warn, width};
+use super::screen::warn;
+use super::session::{Session, catch_interrupts, digest, machine, write_json};
 use super::source::{LARGEST_PROBLEM, read_file};
-use super::values::{Until, evaluations, given, share, time, until};
+use super::values::{given, share};
 
 /// The budget of a hunt that was given none.
 const DEFAULT_TIME: Duration = Duration::from_secs(60);
-/// How often the minima are written while the hunt goes on.
-const WRITTEN: Duration = Duration::from_secs(30);
 /// The largest file of given points.
-const LARGEST_POINTS: u64 = 2 << 30;
-/// Minima that the summary lists.
-const LISTED: usize = 10;
-
+pub(crate) const LARGEST_POINTS: u64 = 2 << 30;
 #[derive(Args)]
 pub(crate) struct Hunt {
     /// The problem file
     file: PathBuf,
-    /// Ends after so many evaluations (value and gradient at one point): 1e6
-    #[arg(long, value_name = "COUNT", value_parser = evaluations)]
-    evals: Option<u64>,
-    /// Ends after so much time: 90s, 15m, 8h, 1h30m
-    #[arg(long = "for", value_name = "TIME", value_parser = time)]
-    time: Option<Duration>,
-    /// Ends when met: target=-44.3268, coverage=0.99 (of the survey, with 95 % confidence), or quiet=1e7 (no lower value for
-    /// so many evaluations); may be repeated, and the first met ends the hunt
-    #[arg(long, value_name = "CONDITION", value_parser = until, allow_hyphen_values = true)]
-    until: Vec<Until>,
+    #[command(flatten)]
+    budget: Budget,
     /// The seed of all random numbers
     #[arg(long, default_value_t = 1)]
     seed: u64,
@@ -89,65 +71,54 @@ impl Hunt {
         demand_promises(&problem)?;
         let given_points = self.given_points(&problem)?;
         let sign = if problem.landscape().maximise { -1.0 } else { 1.0 };
-        // Of several conditions of a kind the easiest ends the hunt.
-        let of_kind = |pick: fn(&Until) -> Option<f64>| self.until.iter().filter_map(pick);
-        let target = of_kind(|until| if let Until::Target(value) = until { Some(*value) } else { None })
-            .map(|value| sign * value)
-            .reduce(f64::max);
-        let coverage =
-            of_kind(|until| if let Until::Coverage(share) = until { Some(*share) } else { None }).reduce(f64::min);
-        let quiet =
-            self.until.iter().filter_map(|until| if let Until::Quiet(count) = until { Some(*count) } else { None });
-        let quiet = quiet.min();
-        if coverage.is_some() && self.survey == 0.0 {
+        if self.budget.coverage().is_some() && self.survey == 0.0 {
             return Err(Failure::new(
                 Blame::Input,
                 "--until coverage=… needs a survey, and --survey 0 makes none; leave --survey out, or give it a share"
                     .to_string(),
             ));
         }
-        let allowed = match (self.time, self.evals, self.until.is_empty()) {
-            (None, None, true) => {
-                if !self.quiet {
-                    warn("No budget given: hunting for 60 seconds (--for, --evals and --until set others).");
-                }
-                Some(DEFAULT_TIME)
-            }
-            (time, ..) => time,
-        };
+        if self.budget.is_empty() && !self.quiet {
+            warn("No budget given: hunting for 60 seconds (--for, --evals and --until set others).");
+        }
+        let allowed = if self.budget.is_empty() { Some(DEFAULT_TIME) } else { self.budget.time };
         let settings = Settings {
             seed: self.seed,
             mix: self.mix.clone().unwrap_or_default(),
             survey: self.survey,
-            max_evaluations: self.evals,
-            target,
-            coverage,
-            quiet,
+            max_evaluations: self.budget.evals,
+            target: self.budget.target(sign),
+            coverage: self.budget.coverage(),
+            quiet: self.budget.quiet(),
             given: given_points,
         };
         let threads = self.threads.map_or_else(processors, usize::from);
         let folder = self.folder()?;
+        let lock = folder.lock()?;
         let described = problem.described(&self.givens, &bytes);
-        let run_file = self.run_file(&described, &bytes, &settings, allowed, sign, threads);
-        write_json(&folder, "run.json", &run_file)?;
+        let given = (!settings.given.is_empty()).then(|| points_table(&problem, &settings.given));
+        let run_file = self.run_file(&described, &bytes, &settings, allowed, given.as_deref(), sign, threads);
         folder.write("problem.land", &bytes)?;
-        let mut watch = Watch {
+        if let Some(table) = &given {
+            folder.write("given.csv", table.as_bytes())?;
+        }
+        // The last of them: a folder with a run.json can be gone on from.
+        write_json(&folder, "run.json", &run_file)?;
+        let session = Session {
             problem: &problem,
-            facts: HuntFacts { problem: described, seed: self.seed },
             journal: folder.journal()?,
             folder: &folder,
-            display: Display::new(self.quiet || self.json, allowed, self.evals, sign),
-            began: Instant::now(),
-            written: Instant::now(),
+            _lock: lock,
+            run_file,
+            settings,
+            threads,
             allowed,
-            sign,
+            used: Duration::ZERO,
+            quiet: self.quiet,
+            json: self.json,
             interrupts: catch_interrupts(),
-            failure: None,
         };
-        let outcome = problem.hunt(&settings, threads, &mut watch);
-        watch.display.finish();
-        let outcome = outcome?;
-        watch.end(run_file, &outcome, self.json)
+        session.work(&mut NoPast)
     }
 
     /// The points of `--from`.
@@ -180,9 +151,11 @@ impl Hunt {
         bytes: &[u8],
         settings: &Settings,
         allowed: Option<Duration>,
+        given: Option<&str>,
         sign: f64,
         threads: usize,
     ) -> RunFile {
+        let order = settings.mix.members().iter().map(|member| member.0.name().to_string()).collect();
         let mix = settings.mix.members().iter().map(|(heuristic, share)| (heuristic.name().to_string(), *share));
         RunFile {
             format: run_format(),
@@ -192,6 +165,7 @@ impl Hunt {
             settings: RunSettings {
                 seed: settings.seed,
                 mix: mix.collect(),
+                order,
                 survey: settings.survey,
                 evaluations: settings.max_evaluations,
                 seconds: allowed.map(|time| time.as_secs()),
@@ -200,8 +174,9 @@ impl Hunt {
                 quiet: settings.quiet,
                 fixed_shares: settings.mix.is_fixed(),
                 given_points: settings.given.len(),
+                given_digest: given.map(|table| digest(table.as_bytes())),
             },
-            machine: RunMachine { threads, build: format!("{:?}", thalweg::kernel::Build::best()).to_lowercase() },
+            machine: machine(threads),
             end: None,
         }
     }
@@ -231,168 +206,22 @@ fn demand_promises(problem: &Problem) -> Result<(), Failure> {
     Err(Failure::new(Blame::Input, text))
 }
 
-fn processors() -> usize {
+/// Given points as the table that `--from` reads.
+fn points_table(problem: &Problem, points: &[Vec<f64>]) -> String {
+    let landscape = problem.landscape();
+    let names: Vec<String> =
+        (0..landscape.slots.len()).map(|slot| format!("\"{}\"", landscape.slot_name(slot))).collect();
+    let rows = points.iter().map(|point| point.iter().map(|x| format!("{x:e}")).collect::<Vec<_>>().join(","));
+    let mut table = names.join(",");
+    for row in rows {
+        table.push('\n');
+        table.push_str(&row);
+    }
+    table.push('\n');
+    table
+}
+
+/// The threads of a hunt that was given none.
+pub(crate) fn processors() -> usize {
     std::thread::available_parallelism().map_or(1, usize::from)
-}
-
-/// Counts interrupts: the first ends the hunt with its results written, the second ends the program at once.
-fn catch_interrupts() -> Arc<AtomicU32> {
-    let count = Arc::new(AtomicU32::new(0));
-    let counter = count.clone();
-    let set = ctrlc::set_handler(move || {
-        if counter.fetch_add(1, Ordering::SeqCst) > 0 {
-            std::process::exit(130);
-        }
-    });
-    if set.is_err() {
-        warn("Interrupts cannot be caught here: Ctrl-C will end the program without its last results.");
-    }
-    count
-}
-
-fn write_json(folder: &RunFolder, name: &str, value: &impl serde::Serialize) -> Result<(), Failure> {
-    let mut text =
-        serde_json::to_string_pretty(value).map_err(|error| Failure::new(Blame::Program, error.to_string()))?;
-    text.push('\n');
-    Ok(folder.write(name, text.as_bytes())?)
-}
-
-/// Watches a hunt: the clock, the journal, the files, the display.
-struct Watch<'a> {
-    problem: &'a Problem,
-    facts: HuntFacts,
-    folder: &'a RunFolder,
-    journal: Journal,
-    display: Display,
-    began: Instant,
-    written: Instant,
-    allowed: Option<Duration>,
-    sign: f64,
-    interrupts: Arc<AtomicU32>,
-    failure: Option<Failure>,
-}
-
-impl Observer for Watch<'_> {
-    fn round(&mut self, report: &RoundReport<'_>) -> Verdict {
-        if let Err(failure) = self.record(report) {
-            // What was found is not lost: it is shown at the end, and written again if the disk lets it.
-            self.failure = Some(failure);
-            return Verdict::Stop;
-        }
-        self.display.show(report);
-        self.idle()
-    }
-
-    fn idle(&mut self) -> Verdict {
-        let late = self.allowed.is_some_and(|allowed| self.began.elapsed() >= allowed);
-        if late || self.is_interrupted() { Verdict::Stop } else { Verdict::Continue }
-    }
-}
-
-impl Watch<'_> {
-    fn is_interrupted(&self) -> bool {
-        self.interrupts.load(Ordering::SeqCst) > 0
-    }
-
-    fn record(&mut self, report: &RoundReport<'_>) -> Result<(), Failure> {
-        let entry = JournalEntry {
-            round: report.round,
-            evaluations: report.evaluations,
-            by_heuristic: by_name(&report.by_heuristic),
-            confirming: report.confirming,
-            lowest: report.ledger.lowest_value().map(|value| self.sign * value),
-            distinct: report.ledger.len() as u64,
-            confirmed: report.ledger.n_confirmed() as u64,
-            shares: shares_by_name(report),
-        };
-        let line = serde_json::to_string(&entry).map_err(|error| Failure::new(Blame::Program, error.to_string()))?;
-        self.journal.append(&line)?;
-        if self.written.elapsed() >= WRITTEN {
-            let view = LedgerView {
-                ledger: report.ledger,
-                evaluations: report.evaluations,
-                survey_descents: report.descents[Heuristic::Survey.number()],
-                troubles: report.troubles,
-            };
-            let file = self.problem.minima_file(&self.facts, &view);
-            self.write_minima(&file)?;
-            self.written = Instant::now();
-        }
-        Ok(())
-    }
-
-    fn write_minima(&self, file: &MinimaFile) -> Result<(), Failure> {
-        let refused = |error: String| Failure::new(Blame::Program, error);
-        let json = write_minima_file(file).map_err(|error| refused(error.to_string()))?;
-        let csv = minima_csv(file).map_err(|error| refused(error.to_string()))?;
-        self.folder.write("minima.json", json.as_bytes())?;
-        Ok(self.folder.write("minima.csv", csv.as_bytes())?)
-    }
-
-    fn end(mut self, mut run_file: RunFile, outcome: &Outcome, json: bool) -> Result<End, Failure> {
-        let view = LedgerView {
-            ledger: &outcome.ledger,
-            evaluations: outcome.evaluations,
-            survey_descents: outcome.descents[Heuristic::Survey.number()],
-            troubles: &outcome.troubles,
-        };
-        let file = self.problem.minima_file(&self.facts, &view);
-        let reason = match outcome.ending {
-            _ if self.failure.is_some() => "failed",
-            Ending::Evaluations => "evaluations",
-            Ending::Target => "target",
-            Ending::Coverage => "coverage",
-            Ending::Quiet => "quiet",
-            Ending::Observer if self.is_interrupted() => "interrupted",
-            Ending::Observer => "time",
-        };
-        run_file.end = Some(RunEnd {
-            reason: reason.to_string(),
-            rounds: outcome.rounds,
-            evaluations: outcome.evaluations,
-            by_heuristic: by_name(&outcome.by_heuristic),
-            confirming: outcome.confirming,
-            seconds: self.began.elapsed().as_secs_f64(),
-        });
-        let written = self.write_minima(&file).and_then(|()| write_json(self.folder, "run.json", &run_file));
-        let mut text = if json {
-            write_minima_file(&file).map_err(|error| Failure::new(Blame::Program, error.to_string()))?
-        } else {
-            minima_text(&file, LISTED, width())
-        };
-        if !json {
-            let why = match reason {
-                "interrupted" => "Interrupted; ",
-                "target" => "Target met; ",
-                "coverage" => "Coverage reached; ",
-                "quiet" => "No lower value for long; ",
-                _ => "",
-            };
-            text.push_str(&format!("{why}the results are in {}\n", self.folder.path().display()));
-        }
-        match self.failure.take().or(written.err()) {
-            None => Ok(End { text, status: 0 }),
-            Some(failure) => {
-                // The results are shown all the same: they may exist nowhere else.
-                super::screen::say(&text)?;
-                Err(failure)
-            }
-        }
-    }
-}
-
-/// Shares to four digits: they are for reading.
-fn shares_by_name(report: &RoundReport<'_>) -> BTreeMap<String, f64> {
-    let rounded = |share: f64| (share * 1e4).round() / 1e4;
-    let heuristics = Heuristic::ALL
-        .iter()
-        .map(|heuristic| (heuristic.name().to_string(), rounded(report.shares[heuristic.number()])));
-    let ways =
-        report.ways.iter().map(|&(heuristic, way, share)| (format!("{} {way}", heuristic.name()), rounded(share)));
-    heuristics.chain(ways).filter(|(_, share)| *share > 0.0).collect()
-}
-
-fn by_name(by_heuristic: &[u64]) -> BTreeMap<String, u64> {
-    let named = Heuristic::ALL.iter().map(|heuristic| (heuristic.name().to_string(), by_heuristic[heuristic.number()]));
-    named.filter(|(_, spent)| *spent > 0).collect()
 }

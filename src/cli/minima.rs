@@ -8,7 +8,7 @@ use thalweg::{Blame, Failure};
 
 use super::command::End;
 use super::screen::width;
-use super::source::read_file;
+use super::source::{read_file, run_folder};
 
 /// The largest `minima.json` that is read.
 const LARGEST: u64 = 2 << 30;
@@ -30,12 +30,7 @@ pub(crate) struct Minima {
 
 impl Minima {
     pub(crate) fn run(&self) -> Result<End, Failure> {
-        let beside = PathBuf::from("results").join(&self.run);
-        let folder = if !self.run.exists() && beside.exists() { beside } else { self.run.clone() };
-        if !folder.is_dir() {
-            let text = format!("there is no run folder {}; name one of those in results/", folder.display());
-            return Err(Failure::new(Blame::Input, text));
-        }
+        let folder = run_folder(&self.run)?;
         let path = folder.join("minima.json");
         let bytes = read_file(&path, LARGEST)?;
         let refused = |cause: String| Failure::new(Blame::Input, format!("{}: {cause}", path.display()));

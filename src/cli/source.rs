@@ -2,7 +2,7 @@
 
 use std::fs::File;
 use std::io::Read;
-use std::path::Path;
+use std::path::{Path, PathBuf};
 
 use thalweg::{Blame, Failure};
 
@@ -33,4 +33,15 @@ pub(crate) fn read_file(path: &Path, largest: u64) -> Result<Vec<u8>, Failure> {
         .and_then(|file| file.take(largest + 1).read_to_end(&mut bytes))
         .map_err(|error| Failure::new(Blame::Outside, format!("{shown} could not be read ({error})")))?;
     if bytes.len() as u64 > largest { Err(too_large()) } else { Ok(bytes) }
+}
+
+/// The folder of a run that the user names by its path, or by its name within `results`.
+pub(crate) fn run_folder(named: &Path) -> Result<PathBuf, Failure> {
+    let beside = Path::new("results").join(named);
+    let folder = if !named.exists() && beside.exists() { beside } else { named.to_path_buf() };
+    if folder.is_dir() {
+        return Ok(folder);
+    }
+    let text = format!("there is no run folder {}; name one of those in results/", folder.display());
+    Err(Failure::new(Blame::Input, text))
 }

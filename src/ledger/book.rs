@@ -6,7 +6,7 @@ use std::sync::Arc;
 use crate::base::order::Total;
 
 use super::entry::{Candidate, Confirmed, Entry, EntryId, MAX_HEURISTICS, Meeting, Record};
-use super::identity::{Identity, Match, Tolerances};
+use super::identity::{Fingerprint, Identity, Match, Tolerances};
 
 /// What came of meeting a candidate.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -76,13 +76,48 @@ impl Ledger {
         }
     }
 
+    /// What decides whether two points are the same.
+    pub fn identity(&self) -> &Identity {
+        &self.identity
+    }
+
     /// The tolerances.
     pub fn tolerances(&self) -> Tolerances {
         self.tolerances
     }
 
-    /// Takes in a converged descent.
+    /// Takes in a converged descent: [`Ledger::recognise`], then what follows from it.
     pub fn meet(&mut self, candidate: Candidate, meeting: Meeting) -> Met {
+        let same = self.recognise(&candidate);
+        let Some(&first) = same.first() else { return Met { entry: self.admit(candidate, meeting), new: true } };
+        let is_later = |entry: &EntryId| self.entry(*entry).is_some_and(|entry| entry.first().key() < meeting.key());
+        if same.iter().all(is_later) {
+            return Met { entry: self.count(&same, candidate.kinked, meeting).unwrap_or(first), new: false };
+        }
+        // Arrivals out of order: this one may have to represent the entry.
+        let id = self.admit(candidate, meeting);
+        Met { entry: same.into_iter().fold(id, |left, right| self.merge(left, right)), new: false }
+    }
+
+    /// The entries that a converged descent is the same as; none means that it is new.
+    pub fn recognise(&mut self, candidate: &Candidate) -> Vec<EntryId> {
+        self.same_as(&Look {
+            value: candidate.value + 0.0,
+            at: &candidate.at,
+            fingerprint: &candidate.fingerprint,
+            kinked: candidate.kinked,
+            confirmed: None,
+        })
+    }
+
+    /// A new entry for a converged descent that was recognised as none of the entries.
+    pub fn admit(&mut self, candidate: Candidate, meeting: Meeting) -> EntryId {
+        self.has_kinks |= candidate.kinked;
+        let number = self.records.len() as u32;
+        self.records.push(None);
+        self.merged.push(number);
+        let mut hits = [0; MAX_HEURISTICS];
+        hits[meeting.heuristic.min(MAX_HEURISTICS - 1)] = 1;
         let record = Record {
             // -0 stands below 0 in the order of keys.
             value: candidate.value + 0.0,
@@ -90,23 +125,29 @@ impl Ledger {
             fingerprint: candidate.fingerprint,
             kinked: candidate.kinked,
             first: meeting,
-            hits: {
-                let mut hits = [0; MAX_HEURISTICS];
-                hits[meeting.heuristic.min(MAX_HEURISTICS - 1)] = 1;
-                hits
-            },
+            hits,
             confirmed: None,
         };
-        self.has_kinks |= record.kinked;
-        let same = self.same_as(&record);
-        let id = self.add(record);
-        match same.first() {
-            None => Met { entry: id, new: true },
-            Some(_) => {
-                let entry = same.into_iter().fold(id, |left, right| self.merge(left, right));
-                Met { entry, new: false }
-            }
+        self.insert(number, record);
+        EntryId(number)
+    }
+
+    /// Counts a converged descent, later than all before, that was recognised as these entries; several become one.
+    /// `None` where there is no such entry.
+    pub fn count(&mut self, same: &[EntryId], kinked: bool, meeting: Meeting) -> Option<EntryId> {
+        self.has_kinks |= kinked;
+        let (&first, others) = same.split_first()?;
+        let entry = others.iter().fold(first, |left, &right| self.merge(left, right));
+        let number = self.resolve(entry)?;
+        if !kinked && self.records[number as usize].as_ref().is_some_and(|record| record.kinked) {
+            // It can be confirmed after all.
+            let mut record = self.remove(number)?;
+            record.kinked = false;
+            self.insert(number, record);
         }
+        let record = self.records[number as usize].as_mut()?;
+        record.hits[meeting.heuristic.min(MAX_HEURISTICS - 1)] += 1;
+        Some(EntryId(number))
     }
 
     /// The polish of an entry. If it then proves the same as others, they become one.
@@ -117,7 +158,7 @@ impl Ledger {
         record.at = confirmed.at.clone();
         record.fingerprint = self.identity.fingerprint(&record.at);
         record.confirmed = Some(confirmed);
-        let same = self.same_as(&record);
+        let same = self.same_as(&Look::of(&record));
         self.insert(number, record);
         same.into_iter().fold(EntryId(number), |left, right| self.merge(left, right));
     }
@@ -230,12 +271,12 @@ impl Ledger {
     }
 
     /// The entries that an arrival is the same as.
-    fn same_as(&mut self, record: &Record) -> Vec<EntryId> {
+    fn same_as(&mut self, record: &Look<'_>) -> Vec<EntryId> {
         let kinked = record.kinked || self.has_kinks;
         let reach = self.value_tolerance(record.value, kinked);
         let around = |middle: f64, reach: f64| (Total(middle - reach), 0)..=(Total(middle + reach), u32::MAX);
         let values = around(record.value, reach);
-        let candidates = if is_flat(record) {
+        let candidates = if record.is_flat() {
             self.by_value.range(values).map(|&(_, number)| number).collect()
         } else {
             let slack = self.identity.slack(self.place_tolerance(kinked));
@@ -250,24 +291,24 @@ impl Ledger {
         candidates.into_iter().filter(|&number| self.is_same(record, number)).map(EntryId).collect()
     }
 
-    fn is_same(&self, record: &Record, number: u32) -> bool {
+    fn is_same(&self, record: &Look<'_>, number: u32) -> bool {
         let Some(other) = &self.records[number as usize] else { return false };
         let kinked = record.kinked || other.kinked;
         if (record.value - other.value).abs() > self.value_tolerance(record.value, kinked) {
             return false;
         }
-        if is_flat(record) || is_flat(other) {
+        if record.is_flat() || is_flat(other) {
             // A valley is one answer: along it every place has the same value.
             return true;
         }
-        if let (Some(a), Some(b)) = (&record.confirmed, &other.confirmed)
+        if let (Some(a), Some(b)) = (record.confirmed, &other.confirmed)
             && !same_spectrum(&a.stiffness, &b.stiffness)
         {
             return false;
         }
         let place = self.place_tolerance(kinked);
-        self.identity.alike(&record.fingerprint, &other.fingerprint, place)
-            && matches!(self.identity.compare(&other.at, &record.at, place, place), Match::Same(_))
+        self.identity.alike(record.fingerprint, &other.fingerprint, place)
+            && matches!(self.identity.compare(&other.at, record.at, place, place), Match::Same(_))
     }
 
     fn resolve(&self, id: EntryId) -> Option<u32> {
@@ -276,14 +317,6 @@ impl Ledger {
             number = self.merged[number as usize];
         }
         Some(number)
-    }
-
-    fn add(&mut self, record: Record) -> EntryId {
-        let number = self.records.len() as u32;
-        self.records.push(None);
-        self.merged.push(number);
-        self.insert(number, record);
-        EntryId(number)
     }
 
     fn insert(&mut self, number: u32, record: Record) {
@@ -337,6 +370,31 @@ impl Ledger {
         a.kinked &= b.kinked;
         self.insert(kept, a);
         EntryId(kept)
+    }
+}
+
+/// What is compared with the entries.
+struct Look<'a> {
+    value: f64,
+    at: &'a [f64],
+    fingerprint: &'a Fingerprint,
+    kinked: bool,
+    confirmed: Option<&'a Confirmed>,
+}
+
+impl<'a> Look<'a> {
+    fn of(record: &'a Record) -> Self {
+        Look {
+            value: record.value,
+            at: &record.at,
+            fingerprint: &record.fingerprint,
+            kinked: record.kinked,
+            confirmed: record.confirmed.as_ref(),
+        }
+    }
+
+    fn is_flat(&self) -> bool {
+        self.confirmed.is_some_and(Confirmed::is_flat)
     }
 }
 

@@ -27,5 +27,5 @@ pub use minima_file::{
 };
 pub use minima_text::minima_text;
 pub use nested::{Nested, nest};
-pub use run_file::{JournalEntry, RunEnd, RunFile, RunMachine, RunSettings, run_format};
+pub use run_file::{JournalEntry, RunEnd, RunFile, RunFileError, RunMachine, RunSettings, read_run_file, run_format};
 pub use table::{Align, Table, plain};

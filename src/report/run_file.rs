@@ -9,7 +9,7 @@ use super::minima_file::{Format, Problem};
 /// The whole file: one object, written at the beginning and again at the end.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
 pub struct RunFile {
-    /// `thalweg run`, version 1.
+    /// `thalweg run`, version 2.
     pub format: Format,
     /// The version of the program.
     pub program: String,
@@ -33,6 +33,8 @@ pub struct RunSettings {
     pub seed: u64,
     /// The heuristics with their shares, at the beginning, of what the survey leaves.
     pub mix: BTreeMap<String, f64>,
+    /// Their order.
+    pub order: Vec<String>,
     /// The share of evaluations that goes to the survey.
     pub survey: f64,
     /// The evaluations allowed.
@@ -55,6 +57,9 @@ pub struct RunSettings {
     pub fixed_shares: bool,
     /// Points that the user gave.
     pub given_points: usize,
+    /// The SHA-256 of `given.csv`, which has them; missing where there are none.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub given_digest: Option<String>,
 }
 
 /// Where it ran.
@@ -85,7 +90,7 @@ pub struct RunEnd {
 
 /// The format of `run.json`.
 pub fn run_format() -> Format {
-    Format { name: "thalweg run".to_string(), version: 1 }
+    Format { name: "thalweg run".to_string(), version: 2 }
 }
 
 /// One line of the journal: the state after a round.
@@ -110,4 +115,64 @@ pub struct JournalEntry {
     /// of its turns.
     #[serde(default)]
     pub shares: BTreeMap<String, f64>,
+    /// What its tasks came to, from which a hunt goes on (see `search::RoundRecord`).
+    #[serde(default)]
+    pub tasks: String,
+}
+
+/// Why `run.json` cannot be gone on from.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub enum RunFileError {
+    /// It is not what this program writes.
+    Unreadable(String),
+    /// It is another format, or of an earlier version, which held too little.
+    Earlier(u32),
+    /// It is of a later version.
+    Later(u32),
+}
+
+impl std::fmt::Display for RunFileError {
+    fn fmt(&self, out: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        let own = run_format().version;
+        match self {
+            RunFileError::Unreadable(cause) => {
+                write!(out, "this is not the run.json of a hunt ({cause}); put back a sound copy")
+            }
+            RunFileError::Earlier(version) => write!(
+                out,
+                "the run has format {version}, which recorded too little to go on from; this program needs {own}. Its minima can \
+                 still be used: `thalweg hunt … --from RUN`"
+            ),
+            RunFileError::Later(version) => write!(
+                out,
+                "the run was written by a newer version of the program (format {version}, while this one knows {own}); \
+                 go on with that version"
+            ),
+        }
+    }
+}
+
+impl std::error::Error for RunFileError {}
+
+/// Reads `run.json`.
+///
+/// # Errors
+/// A [`RunFileError`] where it is damaged, or of another version.
+pub fn read_run_file(text: &str) -> Result<RunFile, RunFileError> {
+    #[derive(Deserialize)]
+    struct Head {
+        format: Format,
+    }
+    let unreadable = |error: serde_json::Error| RunFileError::Unreadable(error.to_string());
+    // The version first: what a later one means by the rest is unknown.
+    let head: Head = serde_json::from_str(text).map_err(unreadable)?;
+    let own = run_format();
+    if head.format.name != own.name {
+        return Err(RunFileError::Unreadable(format!("its format is `{}`", head.format.name)));
+    }
+    match head.format.version {
+        version if version > own.version => Err(RunFileError::Later(version)),
+        version if version < own.version => Err(RunFileError::Earlier(version)),
+        _ => serde_json::from_str(text).map_err(unreadable),
+    }
 }

@@ -14,27 +14,35 @@ use super::error::RunError;
 /// # Errors
 /// [`RunError::Write`] where any of the steps fails; what stood there before is then untouched.
 pub fn write_atomically(path: &Path, bytes: &[u8]) -> Result<(), RunError> {
-    let failed = |source: std::io::Error| RunError::Write { path: path.to_path_buf(), cause: source.to_string() };
-    let mut beside = path.as_os_str().to_os_string();
-    beside.push(".part");
-    let beside = Path::new(&beside);
-    let write = || -> std::io::Result<()> {
-        let mut file = File::create(beside)?;
-        file.write_all(bytes)?;
-        file.sync_all()?;
-        fs::rename(beside, path)
-    };
-    write().map_err(|error| {
-        // Best effort: the first failure is the one worth telling.
-        let _ = fs::remove_file(beside);
-        failed(error)
-    })?;
+    write(path, bytes, File::sync_all)?;
     // The rename itself is safe only once the folder is synced. Some systems cannot sync a folder; the file is whole
     // there all the same.
     if let Some(folder) = path.parent().and_then(|folder| File::open(folder).ok()) {
         let _ = folder.sync_all();
     }
     Ok(())
+}
+
+/// As [`write_atomically`], but the disk is not waited for.
+pub(super) fn replace(path: &Path, bytes: &[u8]) -> Result<(), RunError> {
+    write(path, bytes, |_| Ok(()))
+}
+
+fn write(path: &Path, bytes: &[u8], sync: impl Fn(&File) -> std::io::Result<()>) -> Result<(), RunError> {
+    let mut beside = path.as_os_str().to_os_string();
+    beside.push(".part");
+    let beside = Path::new(&beside);
+    let write = || -> std::io::Result<()> {
+        let mut file = File::create(beside)?;
+        file.write_all(bytes)?;
+        sync(&file)?;
+        fs::rename(beside, path)
+    };
+    write().map_err(|error| {
+        // Best effort: the first failure is the one worth telling.
+        let _ = fs::remove_file(beside);
+        RunError::Write { path: path.to_path_buf(), cause: error.to_string() }
+    })
 }
 
 #[cfg(test)]

@@ -31,12 +31,28 @@ pub enum RunError {
         /// What the system says.
         cause: String,
     },
+    /// A file could not be read.
+    Read {
+        /// The file.
+        path: PathBuf,
+        /// What the system says.
+        cause: String,
+    },
+    /// Another process works on the run.
+    Locked(PathBuf),
+    /// A line of the journal was altered: sound ones follow it.
+    Altered {
+        /// The journal.
+        path: PathBuf,
+        /// The line, from 1.
+        line: u64,
+    },
 }
 
 impl RunError {
     /// Whether the user typed something wrong, rather than that something outside failed.
     pub fn is_usage(&self) -> bool {
-        matches!(self, RunError::Name { .. } | RunError::Exists(_))
+        matches!(self, RunError::Name { .. } | RunError::Exists(_) | RunError::Locked(_) | RunError::Altered { .. })
     }
 }
 
@@ -55,6 +71,20 @@ impl fmt::Display for RunError {
             RunError::Write { path, cause } => {
                 write!(out, "{} could not be written ({cause}); make room or mend the permissions", path.display())
             }
+            RunError::Read { path, cause } => {
+                write!(out, "{} could not be read ({cause}); mend the permissions or the disk", path.display())
+            }
+            RunError::Locked(path) => write!(
+                out,
+                "another process is at work on {}; end it first, or watch it with `thalweg look`",
+                path.display()
+            ),
+            RunError::Altered { path, line } => write!(
+                out,
+                "{}, line {line}: the line does not match its checksum, though sound lines follow it: the file was altered; \
+                 put back a sound copy, or keep what stands before the line with --salvage",
+                path.display()
+            ),
         }
     }
 }

@@ -1,12 +1,12 @@
 //! The folder of one run.
 
-use std::fs;
+use std::fs::{self, File, OpenOptions, TryLockError};
 use std::io::ErrorKind;
 use std::path::{Path, PathBuf};
 
-use super::atomic::write_atomically;
+use super::atomic::{replace, write_atomically};
 use super::error::RunError;
-use super::journal::Journal;
+use super::journal::{Journal, JournalReader, Sound};
 use super::name::demand_valid_name;
 
 /// How a run is to be called.
@@ -18,7 +18,12 @@ pub enum Wanted<'a> {
     Stem(&'a str),
 }
 
-/// A run folder that this process made.
+/// A run that no other process may work on while this lives. The system gives the lock up when the process ends, however
+/// it ends.
+#[derive(Debug)]
+pub struct Lock(#[expect(dead_code, reason = "it is held, not used")] File);
+
+/// A run folder.
 #[derive(Clone, Debug, PartialEq, Eq)]
 pub struct RunFolder {
     path: PathBuf,
@@ -56,6 +61,34 @@ impl RunFolder {
         }
     }
 
+    /// The folder of an earlier run.
+    pub fn of(path: &Path) -> RunFolder {
+        let name = path.file_name().map_or_else(String::new, |name| name.to_string_lossy().into_owned());
+        RunFolder { path: path.to_path_buf(), name }
+    }
+
+    /// Keeps other processes away.
+    ///
+    /// # Errors
+    /// [`RunError::Locked`] where one is at work already, [`RunError::Write`] where the system refuses.
+    pub fn lock(&self) -> Result<Lock, RunError> {
+        // A file of its own: the others are replaced, and some systems keep a locked file from being read.
+        let path = self.path.join("lock");
+        let refused = |error: std::io::Error| RunError::Write { path: path.clone(), cause: error.to_string() };
+        let file = OpenOptions::new().create(true).append(true).open(&path).map_err(refused)?;
+        match file.try_lock() {
+            Ok(()) => Ok(Lock(file)),
+            Err(TryLockError::WouldBlock) => Err(RunError::Locked(self.path.clone())),
+            Err(TryLockError::Error(error)) => Err(refused(error)),
+        }
+    }
+
+    /// Whether a process is at work on it.
+    pub fn is_locked(&self) -> bool {
+        let file = File::open(self.path.join("lock"));
+        file.is_ok_and(|file| matches!(file.try_lock_shared(), Err(TryLockError::WouldBlock)))
+    }
+
     /// Where it is.
     pub fn path(&self) -> &Path {
         &self.path
@@ -72,6 +105,31 @@ impl RunFolder {
     /// [`RunError::Write`] where the system refuses.
     pub fn write(&self, file: &str, bytes: &[u8]) -> Result<(), RunError> {
         write_atomically(&self.path.join(file), bytes)
+    }
+
+    /// Writes one of its files, or replaces it, at one stroke, but without waiting for the disk: for what is written often and
+    /// needed by nobody after a power cut.
+    ///
+    /// # Errors
+    /// [`RunError::Write`] where the system refuses.
+    pub fn write_unsynced(&self, file: &str, bytes: &[u8]) -> Result<(), RunError> {
+        replace(&self.path.join(file), bytes)
+    }
+
+    /// Goes on with its journal: a torn end is cut off; an altered middle is refused, or cut off too with `salvage`.
+    ///
+    /// # Errors
+    /// [`RunError::Altered`], or [`RunError::Read`] and [`RunError::Write`] where the system refuses.
+    pub fn go_on(&self, salvage: bool) -> Result<(Journal, Sound), RunError> {
+        Journal::go_on(&self.path.join("journal.jsonl"), salvage)
+    }
+
+    /// Reads its journal from the beginning.
+    ///
+    /// # Errors
+    /// [`RunError::Read`] where the system refuses.
+    pub fn read_journal(&self) -> Result<JournalReader, RunError> {
+        JournalReader::open(&self.path.join("journal.jsonl"))
     }
 
     /// Begins its journal.
@@ -98,6 +156,19 @@ mod tests {
         assert_eq!(taken, RunError::Exists(results.path().join("pore")));
         assert!(taken.is_usage());
         assert!(taken.to_string().contains("--name"), "the remedy: {taken}");
+    }
+
+    #[test]
+    fn a_lock_keeps_others_away_until_it_is_given_up() {
+        let results = tempfile::tempdir().unwrap();
+        let run = RunFolder::create(results.path(), Wanted::Stem("pore")).unwrap();
+        assert!(!run.is_locked());
+        let lock = run.lock().unwrap();
+        assert_eq!(run.lock().unwrap_err(), RunError::Locked(run.path().to_path_buf()));
+        assert!(run.is_locked());
+        drop(lock);
+        assert!(!run.is_locked());
+        run.lock().unwrap();
     }
 
     #[test]

@@ -12,7 +12,8 @@ use crate::landscape::Landscape;
 use crate::ledger::Identity;
 
 use super::crew::{Gathered, Gathering, Queue};
-use super::outcome::{Ending, HuntError, Observer, Outcome, RoundReport, Verdict};
+use super::outcome::{Ending, HuntError, NoPast, Observer, Outcome, Past, RoundReport, Verdict};
+use super::record::RoundRecord;
 use super::settings::Settings;
 use super::start;
 use super::state::Hunt;
@@ -40,6 +41,24 @@ pub fn hunt(
     threads: usize,
     observer: &mut dyn Observer,
 ) -> Result<Outcome, HuntError> {
+    resume(landscape, kernel, settings, threads, observer, &mut NoPast)
+}
+
+/// Goes on with a hunt whose first rounds were recorded: the result is that of a hunt that was never interrupted.
+///
+/// The recorded rounds are drawn as they were and not worked on. What was asked for ends the hunt after the last of them
+/// or later, so that nothing found is dropped by a smaller budget.
+///
+/// # Errors
+/// As [`hunt`]; [`HuntError::Past`] where the records are not those of this hunt.
+pub fn resume(
+    landscape: &Landscape,
+    kernel: &Arc<Kernel>,
+    settings: &Settings,
+    threads: usize,
+    observer: &mut dyn Observer,
+    past: &mut dyn Past,
+) -> Result<Outcome, HuntError> {
     let shop = Workshop {
         kernel: kernel.clone(),
         structure: Arc::new(Structure::new(landscape)),
@@ -66,7 +85,7 @@ pub fn hunt(
         }
         drop(sender);
         let mut crew = Crew { queue: &queue, gathering: &mut gathering };
-        ended = crew.run(&mut state, observer);
+        ended = crew.run(&mut state, observer, past);
         queue.close();
     });
     let ending = ended?;
@@ -102,21 +121,39 @@ struct Crew<'a> {
 }
 
 impl Crew<'_> {
-    fn run(&mut self, state: &mut Hunt, observer: &mut dyn Observer) -> Result<Ending, HuntError> {
+    fn run(&mut self, state: &mut Hunt, observer: &mut dyn Observer, past: &mut dyn Past) -> Result<Ending, HuntError> {
+        let n_past = past.rounds();
         for round in 0..IN_FLIGHT {
-            self.send(round, state.draw(round));
+            self.draw(round, state, n_past);
         }
-        let mut round = 0;
+        let mut ended = None;
+        for round in 0..n_past {
+            let recorded = past.next().ok_or(HuntError::Past(round))?;
+            if !state.replay(round, &recorded.record)
+                || (state.evaluations(), state.ledger().len() as u64) != (recorded.evaluations, recorded.distinct)
+            {
+                return Err(HuntError::Past(round));
+            }
+            ended = state.ending();
+            if observer.replayed(&report(round, &recorded.record, state)) == Verdict::Stop {
+                return Err(HuntError::GivenUp);
+            }
+            self.draw(round + IN_FLIGHT, state, n_past);
+        }
+        let mut round = n_past;
         let ending = loop {
-            let Some(results) = self.wait(round, observer)? else { break Ending::Observer };
-            if let Some(ending) = state.merge(results) {
-                observer.round(&report(round, state));
+            if let Some(ending) = ended {
                 break ending;
             }
-            if observer.round(&report(round, state)) == Verdict::Stop {
+            let Some(results) = self.wait(round, observer)? else { break Ending::Observer };
+            let record = state.merge(round, results);
+            ended = state.ending();
+            if observer.round(&report(round, &record, state)) == Verdict::Stop && ended.is_none() {
                 break Ending::Observer;
             }
-            self.send(round + IN_FLIGHT, state.draw(round + IN_FLIGHT));
+            if ended.is_none() {
+                self.draw(round + IN_FLIGHT, state, n_past);
+            }
             round += 1;
         };
         // What is in flight is dropped, not merged: a hunt that goes on later draws the same rounds again.
@@ -139,8 +176,16 @@ impl Crew<'_> {
                 Gathered::Lost => return Err(HuntError::Worker),
             }
         };
-        state.merge_closing(results);
+        state.merge_closing(round, results);
         Ok(())
+    }
+
+    /// Draws a round, and sends it to be worked on unless its outcome is recorded.
+    fn draw(&mut self, round: u64, state: &mut Hunt, n_past: u64) {
+        let tasks = state.draw(round);
+        if round >= n_past {
+            self.send(round, tasks);
+        }
     }
 
     fn send(&mut self, round: u64, tasks: Vec<Task>) {
@@ -161,9 +206,10 @@ impl Crew<'_> {
     }
 }
 
-fn report(round: u64, state: &Hunt) -> RoundReport<'_> {
+fn report<'a>(round: u64, record: &'a RoundRecord, state: &'a Hunt) -> RoundReport<'a> {
     RoundReport {
         round,
+        record,
         evaluations: state.evaluations(),
         by_heuristic: state.schedule().spent(),
         confirming: state.confirming(),

@@ -2,7 +2,7 @@
 //!
 //! Enters: a landscape, its compiled kernel, settings. Leaves: an [`Outcome`]. Promised: the same landscape, settings
 //! and seed give the same ledger, bit for bit, on any number of threads; round r is drawn up from the state after round
-//! r - 2 and merged in task order. Deliberately absent: clocks, files and signals (an [`Observer`] says when to stop),
+//! r - 2 and merged in task order. A hunt goes on from the records of its rounds as if it had never stopped. Deliberately absent: clocks, files and signals (an [`Observer`] says when to stop),
 //! and any move that knows a particular problem.
 //!
 //! The way of a task: [`state::Hunt`] draws a round of [`task::Task`]s; a [`worker::Worker`] turns each proposal into a
@@ -21,6 +21,7 @@ pub mod multistart;
 pub mod outcome;
 pub mod portfolio;
 pub mod proposer;
+mod record;
 pub mod schedule;
 pub mod settings;
 pub mod start;
@@ -29,6 +30,7 @@ pub mod structure;
 pub mod task;
 pub mod worker;
 
-pub use hunt::hunt;
-pub use outcome::{Ending, HuntError, Observer, Outcome, RoundReport, Troubles, Verdict};
+pub use hunt::{hunt, resume};
+pub use outcome::{Ending, HuntError, NoPast, Observer, Outcome, Past, PastRound, RoundReport, Troubles, Verdict};
+pub use record::{BadRecord, Found, RoundRecord, TaskRecord};
 pub use settings::{Heuristic, Mix, Settings};

@@ -2,6 +2,7 @@
 
 use crate::ledger::Ledger;
 
+use super::record::RoundRecord;
 use super::settings::Heuristic;
 use super::task::Lost;
 
@@ -13,6 +14,12 @@ pub trait Observer {
     /// Called often from the waiting thread while a round is under way; [`Verdict::Stop`] ends the hunt with the last
     /// whole round, and drops what is in flight.
     fn idle(&mut self) -> Verdict {
+        Verdict::Continue
+    }
+
+    /// Called after each recorded round of a hunt that is resumed; [`Verdict::Stop`] gives the hunt up with
+    /// [`HuntError::GivenUp`].
+    fn replayed(&mut self, _report: &RoundReport<'_>) -> Verdict {
         Verdict::Continue
     }
 }
@@ -30,6 +37,8 @@ pub enum Verdict {
 pub struct RoundReport<'a> {
     /// The round's number, from 0.
     pub round: u64,
+    /// What its tasks came to.
+    pub record: &'a RoundRecord,
     /// Evaluations so far.
     pub evaluations: u64,
     /// Evaluations so far by heuristic, in the order of [`Heuristic::ALL`].
@@ -98,6 +107,40 @@ pub enum Ending {
     Observer,
 }
 
+/// The rounds that a hunt had before it was interrupted.
+pub trait Past {
+    /// How many there are.
+    fn rounds(&self) -> u64;
+
+    /// The next one, in order; `None` where it cannot be had, which ends the hunt with [`HuntError::Past`].
+    fn next(&mut self) -> Option<PastRound>;
+}
+
+/// A round of a hunt that was interrupted.
+#[derive(Clone, Debug, PartialEq)]
+pub struct PastRound {
+    /// What its tasks came to.
+    pub record: RoundRecord,
+    /// The evaluations after it, to be compared.
+    pub evaluations: u64,
+    /// The distinct entries after it, to be compared.
+    pub distinct: u64,
+}
+
+/// No past: a hunt from its beginning.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub struct NoPast;
+
+impl Past for NoPast {
+    fn rounds(&self) -> u64 {
+        0
+    }
+
+    fn next(&mut self) -> Option<PastRound> {
+        None
+    }
+}
+
 /// What a hunt leaves.
 pub struct Outcome {
     /// Every distinct minimum, confirmed where the closing allowed it.
@@ -118,13 +161,17 @@ pub struct Outcome {
     pub ending: Ending,
 }
 
-/// Why a hunt could not go on; neither is the fault of a problem.
+/// Why a hunt could not go on; none is the fault of a problem.
 #[derive(Clone, Debug, PartialEq, Eq)]
 pub enum HuntError {
     /// The system gave no threads.
     Threads(String),
     /// A worker failed: a fault of the program.
     Worker,
+    /// This recorded round, from 0, is not what the settings lead to.
+    Past(u64),
+    /// The observer gave up before all recorded rounds were taken in.
+    GivenUp,
 }
 
 impl std::fmt::Display for HuntError {
@@ -132,6 +179,14 @@ impl std::fmt::Display for HuntError {
         match self {
             HuntError::Threads(cause) => write!(out, "no threads could be started ({cause}); try fewer"),
             HuntError::Worker => write!(out, "a worker thread failed; this is a fault of the program"),
+            HuntError::Past(round) => write!(
+                out,
+                "round {round} as it was recorded does not follow from the settings and the rounds before; the record was made \
+                 by another version of the program or for other settings"
+            ),
+            HuntError::GivenUp => {
+                write!(out, "interrupted while the recorded rounds were taken in; nothing was changed")
+            }
         }
     }
 }

@@ -121,11 +121,6 @@ impl Schedule {
             (own, _) => mean(self.spent[number], own),
         }
     }
-
-    /// Evaluations that the tasks under way are expected to take.
-    pub fn under_way(&self) -> f64 {
-        self.booked.iter().sum()
-    }
 }
 
 #[cfg(test)]

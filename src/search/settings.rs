@@ -130,6 +130,28 @@ impl Mix {
         Ok(Mix { members, fixed })
     }
 
+    /// A mix as [`Mix::members`] and [`Mix::is_fixed`] told it; nothing is scaled, so that it is the same to the last bit.
+    ///
+    /// # Errors
+    /// A [`MixError`] for a heuristic that is no member, an empty list, or a share that is not a positive number.
+    pub fn restored(members: Vec<(Heuristic, f64)>, fixed: bool) -> Result<Mix, MixError> {
+        if members.is_empty() {
+            return Err(MixError::Empty);
+        }
+        for (number, &(heuristic, share)) in members.iter().enumerate() {
+            if !Heuristic::MEMBERS.contains(&heuristic) {
+                return Err(MixError::Unknown(heuristic.name().to_string()));
+            }
+            if members[..number].iter().any(|&(other, _)| other == heuristic) {
+                return Err(MixError::Repeated(heuristic));
+            }
+            if !(share > 0.0 && share.is_finite()) {
+                return Err(MixError::BadShare(share.to_string()));
+            }
+        }
+        Ok(Mix { members, fixed })
+    }
+
     /// Whether the shares stay as they are.
     pub fn is_fixed(&self) -> bool {
         self.fixed

@@ -1,19 +1,21 @@
 //! The state of a hunt: draws up rounds, merges their results.
 //!
 //! Everything here runs on one thread and in task order, so the bits of a hunt are decided here and in the tasks, never
-//! by who finished first.
+//! by who finished first. Results become a [`RoundRecord`] and change the state through it alone; a hunt that is
+//! resumed applies the same records, so that both ways lead to the same state by construction.
 
-use std::collections::BTreeSet;
+use std::collections::{BTreeMap, BTreeSet};
 use std::sync::Arc;
 
 use crate::base::random::{Purpose, stream};
-use crate::ledger::{EntryId, Identity, Ledger, Meeting};
+use crate::ledger::{Candidate, EntryId, Identity, Ledger, Meeting};
 use crate::numbers::functions;
 use crate::statistics::{Confidence, Frequencies, Unconverged, coverage};
 
 use super::outcome::{Ending, Troubles};
 use super::portfolio::Portfolio;
 use super::proposer::{Arrival, Place, Scene};
+use super::record::{Found, RoundRecord, TaskRecord};
 use super::schedule::Schedule;
 use super::settings::{Heuristic, Settings};
 use super::structure::Structure;
@@ -45,6 +47,13 @@ const COVERAGE_GROWTH: u64 = 20;
 /// The share of evaluations that confirmations may take while the hunt goes on; the rest waits for the closing.
 const CONFIRMING_SHARE: f64 = 0.05;
 
+/// What a task is for, to make sense of what comes of it.
+#[derive(Clone, Copy)]
+enum Purport {
+    Descend(Heuristic, u64),
+    Confirm(EntryId),
+}
+
 /// A hunt between two rounds.
 pub struct Hunt {
     settings: Settings,
@@ -56,6 +65,8 @@ pub struct Hunt {
     troubles: Troubles,
     confirming: u64,
     asked_to_confirm: BTreeSet<EntryId>,
+    /// What the tasks of the rounds under way are for.
+    under_way: BTreeMap<u64, Vec<Purport>>,
     given_drawn: usize,
     rounds_merged: u64,
     /// The evaluations after which the lowest value so far was met.
@@ -78,6 +89,7 @@ impl Hunt {
             troubles: Troubles::default(),
             confirming: 0,
             asked_to_confirm: BTreeSet::new(),
+            under_way: BTreeMap::new(),
             given_drawn: 0,
             rounds_merged: 0,
             last_lower: 0,
@@ -90,7 +102,7 @@ impl Hunt {
     }
 
     /// The tasks of a round, from the state as it is: call it for rounds 0 and 1 at the start, and for round r + 2
-    /// right after round r was merged.
+    /// right after round r was merged. The budget has no say, so that a longer hunt begins like a shorter one.
     pub fn draw(&mut self, round: u64) -> Vec<Task> {
         let mut work = Vec::new();
         let size = self.round_size();
@@ -99,17 +111,64 @@ impl Hunt {
         let mut turns = [0; Heuristic::ALL.len()];
         let mut rng = stream(self.settings.seed, round, 0, Purpose::Round);
         self.portfolio.begin_round();
-        while work.len() < size && (work.is_empty() || self.has_room()) {
+        while work.len() < size {
             let scene = Scene { structure: &self.structure, ledger: &self.ledger, met: &self.met, round };
             work.push(self.portfolio.propose(&scene, &mut turns, &mut rng));
         }
+        self.tasks(round, work)
+    }
+
+    fn tasks(&mut self, round: u64, work: Vec<Work>) -> Vec<Task> {
+        let purport = |work: &Work| match *work {
+            Work::Descend { heuristic, mark, .. } => Purport::Descend(heuristic, mark),
+            Work::Confirm { entry, .. } => Purport::Confirm(entry),
+        };
+        self.under_way.insert(round, work.iter().map(purport).collect());
         work.into_iter().enumerate().map(|(number, work)| Task { round, number: number as u64, work }).collect()
     }
 
-    /// Takes in the results of a round, in task order; says whether the hunt has reached what it was asked for.
-    pub fn merge(&mut self, results: Vec<TaskResult>) -> Option<Ending> {
-        self.absorb(results);
+    /// Takes in the results of a round, in task order; gives its record.
+    pub fn merge(&mut self, round: u64, results: Vec<TaskResult>) -> RoundRecord {
         self.rounds_merged += 1;
+        self.absorb(round, results)
+    }
+
+    /// Takes in the results of the closing, which is no round and is not recorded: a hunt that goes on later goes on from
+    /// before it.
+    pub fn merge_closing(&mut self, round: u64, results: Vec<TaskResult>) {
+        self.absorb(round, results);
+    }
+
+    fn absorb(&mut self, round: u64, results: Vec<TaskResult>) -> RoundRecord {
+        let purports = self.under_way.remove(&round).unwrap_or_default();
+        let mut record = RoundRecord { tasks: Vec::with_capacity(results.len()) };
+        for (number, (result, purport)) in results.into_iter().zip(purports).enumerate() {
+            let task = self.decide(result);
+            self.apply(round, number as u64, purport, &task);
+            record.tasks.push(task);
+        }
+        record
+    }
+
+    /// Takes in a round as it was recorded, in place of its results; `false` where the record is that of another hunt.
+    pub fn replay(&mut self, round: u64, record: &RoundRecord) -> bool {
+        let purports = self.under_way.remove(&round).unwrap_or_default();
+        self.rounds_merged += 1;
+        let fits = |(purport, task): (&Purport, &TaskRecord)| match *purport {
+            Purport::Descend(heuristic, _) => task.heuristic == Some(heuristic),
+            Purport::Confirm(_) => task.heuristic.is_none(),
+        };
+        purports.len() == record.tasks.len()
+            && purports.iter().zip(&record.tasks).all(fits)
+            && purports
+                .into_iter()
+                .zip(&record.tasks)
+                .enumerate()
+                .all(|(number, (purport, task))| self.apply(round, number as u64, purport, task))
+    }
+
+    /// Whether the hunt has reached what it was asked for; to be asked once after each round.
+    pub fn ending(&mut self) -> Option<Ending> {
         let reached = |target: f64| self.ledger.lowest_value().is_some_and(|lowest| lowest <= target);
         if self.settings.target.is_some_and(reached) {
             return Some(Ending::Target);
@@ -138,58 +197,93 @@ impl Hunt {
         covered.is_some_and(|covered| covered.interval.low >= share)
     }
 
-    /// Takes in the results of the closing.
-    pub fn merge_closing(&mut self, results: Vec<TaskResult>) {
-        self.absorb(results);
+    /// What a result means to the ledger as it is now.
+    fn decide(&mut self, result: TaskResult) -> TaskRecord {
+        let (heuristic, found) = match result.finding {
+            Finding::Met { heuristic, candidate, .. } => {
+                let before = self.ledger.lowest_entry().and_then(|entry| self.scene(result.round).place(entry));
+                let lower = before.is_none_or(|before| before.is_above(candidate.value));
+                let same = self.ledger.recognise(&candidate);
+                let kinked = candidate.kinked;
+                let found = if same.is_empty() {
+                    Found::New { value: candidate.value, at: candidate.at, kinked, lower }
+                } else {
+                    Found::Known { same, kinked, lower }
+                };
+                (Some(heuristic), found)
+            }
+            Finding::Lost { heuristic, reason, .. } => (Some(heuristic), Found::Lost(reason)),
+            Finding::Confirmed { confirmed, saddles, .. } => (None, Found::Confirmed { confirmed, saddles }),
+            Finding::Dismissed { .. } => (None, Found::Dismissed),
+        };
+        TaskRecord {
+            evaluations: result.evaluations,
+            outside: result.outside,
+            first_outside: result.first_outside.filter(|_| self.troubles.first_outside.is_none()),
+            fillings: result.fillings,
+            heuristic,
+            found,
+        }
     }
 
-    fn absorb(&mut self, results: Vec<TaskResult>) {
-        for result in results {
-            self.troubles.outside += result.outside;
-            if self.troubles.first_outside.is_none() {
-                self.troubles.first_outside = result.first_outside;
+    /// Changes the state by what came of a task; `false` where it cannot have come of it.
+    fn apply(&mut self, round: u64, number: u64, purport: Purport, task: &TaskRecord) -> bool {
+        self.troubles.outside += task.outside;
+        if self.troubles.first_outside.is_none() {
+            self.troubles.first_outside.clone_from(&task.first_outside);
+        }
+        self.portfolio.count_fillings(task.fillings);
+        match (purport, &task.found) {
+            (Purport::Descend(heuristic, mark), found) => {
+                let evaluation = self.evaluations() + task.evaluations;
+                let meeting = Meeting { heuristic: heuristic.number(), round, task: number, evaluation };
+                let (entry, worth) = match found {
+                    Found::New { value, at, kinked, lower } => {
+                        self.note_arrival(heuristic, true, *lower, evaluation);
+                        let candidate = Candidate::new(self.ledger.identity(), *value, at.clone(), *kinked);
+                        let entry = self.ledger.admit(candidate, meeting);
+                        self.met.push(entry);
+                        (Some(entry), self.worth(entry))
+                    }
+                    Found::Known { same, kinked, lower } => {
+                        self.note_arrival(heuristic, false, *lower, evaluation);
+                        let Some(entry) = self.ledger.count(same, *kinked, meeting) else { return false };
+                        (Some(entry), 0.0)
+                    }
+                    Found::Lost(reason) => {
+                        self.troubles.count(*reason);
+                        (None, 0.0)
+                    }
+                    Found::Confirmed { .. } | Found::Dismissed => return false,
+                };
+                self.arrive(heuristic, mark, entry, worth, &(round, number), task.evaluations);
             }
-            let (round, number) = (result.round, result.number);
-            let result_key = (round, number);
-            self.portfolio.count_fillings(result.fillings);
-            match result.finding {
-                Finding::Met { heuristic, mark, candidate } => {
-                    let evaluation = self.evaluations() + result.evaluations;
-                    let meeting = Meeting { heuristic: heuristic.number(), round, task: number, evaluation };
-                    let before = self.ledger.lowest_entry().and_then(|entry| self.scene(round).place(entry));
-                    let lower = before.is_none_or(|before| before.is_above(candidate.value));
-                    if lower {
-                        self.last_lower = evaluation;
-                        self.last_lower_descents = self.schedule().descents().iter().sum();
-                    }
-                    let met = self.ledger.meet(candidate, meeting);
-                    if met.new {
-                        self.met.push(met.entry);
-                    }
-                    if matches!(heuristic, Heuristic::Survey | Heuristic::Multistart) {
-                        self.known_share += (f64::from(u8::from(!met.new)) - self.known_share) / FOLLOWED;
-                    }
-                    let worth = if met.new { self.worth(met.entry) } else { 0.0 };
-                    self.arrive(heuristic, mark, Some(met.entry), worth, &result_key, result.evaluations);
-                }
-                Finding::Lost { heuristic, mark, reason } => {
-                    self.troubles.count(reason);
-                    self.arrive(heuristic, mark, None, 0.0, &result_key, result.evaluations);
-                }
-                Finding::Confirmed { entry, confirmed, saddles } => {
-                    self.confirming += result.evaluations;
-                    self.asked_to_confirm.remove(&entry);
-                    self.troubles.saddles += saddles;
-                    self.troubles.flat += u64::from(confirmed.is_flat());
-                    self.ledger.confirm(entry, confirmed);
-                }
-                Finding::Dismissed { entry } => {
-                    self.confirming += result.evaluations;
-                    self.asked_to_confirm.remove(&entry);
-                    self.troubles.not_confirmed += 1;
-                    self.ledger.dismiss(entry);
-                }
+            (Purport::Confirm(entry), Found::Confirmed { confirmed, saddles }) => {
+                self.confirming += task.evaluations;
+                self.asked_to_confirm.remove(&entry);
+                self.troubles.saddles += saddles;
+                self.troubles.flat += u64::from(confirmed.is_flat());
+                self.ledger.confirm(entry, confirmed.clone());
             }
+            (Purport::Confirm(entry), Found::Dismissed) => {
+                self.confirming += task.evaluations;
+                self.asked_to_confirm.remove(&entry);
+                self.troubles.not_confirmed += 1;
+                self.ledger.dismiss(entry);
+            }
+            (Purport::Confirm(_), _) => return false,
+        }
+        true
+    }
+
+    /// Follows how much of what is met is new, and when a lower value last came.
+    fn note_arrival(&mut self, heuristic: Heuristic, new: bool, lower: bool, evaluation: u64) {
+        if lower {
+            self.last_lower = evaluation;
+            self.last_lower_descents = self.schedule().descents().iter().sum();
+        }
+        if matches!(heuristic, Heuristic::Survey | Heuristic::Multistart) {
+            self.known_share += (f64::from(u8::from(!new)) - self.known_share) / FOLLOWED;
         }
     }
 
@@ -234,10 +328,8 @@ impl Hunt {
     pub fn draw_closing(&mut self, round: u64, most: usize) -> Vec<Task> {
         let waiting: Vec<EntryId> = self.ledger.unconfirmed(most);
         let points = waiting.into_iter().filter_map(|entry| Some((entry, self.ledger.point(entry)?)));
-        points
-            .enumerate()
-            .map(|(number, (entry, at))| Task { round, number: number as u64, work: Work::Confirm { entry, at } })
-            .collect()
+        let work = points.map(|(entry, at)| Work::Confirm { entry, at }).collect();
+        self.tasks(round, work)
     }
 
     /// Evaluations so far, confirmations included.
@@ -285,13 +377,6 @@ impl Hunt {
         let unled = |&(heuristic, _): &(Heuristic, f64)| heuristic == Heuristic::Multistart;
         let first = if self.settings.mix.members().iter().all(unled) { UNLED_ROUND } else { FIRST_ROUND };
         (first + GROWTH * descents as f64).min(LARGEST_ROUND) as usize
-    }
-
-    /// Whether another task fits into the budget, by what tasks usually cost: a small budget is not overrun by a whole
-    /// round.
-    fn has_room(&self) -> bool {
-        let planned = self.evaluations() as f64 + self.schedule().under_way();
-        self.settings.max_evaluations.is_none_or(|most| planned < most as f64)
     }
 
     fn draw_given(&mut self, size: usize, work: &mut Vec<Work>) {
