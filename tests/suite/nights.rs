@@ -256,7 +256,7 @@ fn what_cannot_be_gone_on_with_is_refused() {
     refused("run.json", "\"version\": 2", "\"version\": 3", "a newer version of the program");
     refused("run.json", "\"version\": 2", "\"version\": 1", "recorded too little");
     refused("run.json", "thalweg run", "other run", "not the run.json of a hunt");
-    refused("run.json", "\"hop\"", "\"leap\"", "no heuristic `leap`");
+    refused("run.json", "\"hop\"", "\"leap\"", "the share of `hop` is missing");
     refused("run.json", "{", "", "not the run.json of a hunt");
     refused("problem.land", "4*", "5*", "the problem was edited");
     let ran = folder.run(&["resume", "nowhere"]);
@@ -405,11 +405,19 @@ fn a_run_is_worked_on_by_one_process() {
     folder.put("problem.land", PORE);
     let mut child = start(&folder, &["hunt", "problem.land", "--evals", "1e9", "--quiet"]);
     wait_for_journal(&folder, 2000);
+    let look = folder.run(&["look", "problem"]);
+    assert!(look.out.contains("hunting") && look.out.contains("of 1.00 billion evaluations"), "{look:?}");
+    let status: Value = serde_json::from_str(&folder.run(&["look", "problem", "--json"]).out).unwrap();
+    assert!(status["state"] == "hunting" && status["distinct"].as_u64() > Some(0), "{status}");
     let ran = resume(&folder, &["--evals", "3000"]);
     assert_eq!((ran.status, ran.out.as_str()), (Some(2), ""), "{ran:?}");
     assert!(ran.err.contains("another process is at work on results/problem"), "{}", ran.err);
     child.kill().unwrap();
     child.wait().unwrap();
+    let look = folder.run(&["look", "problem"]);
+    assert!(look.status == Some(0) && look.out.contains("not at work"), "{look:?}");
     let ran = resume(&folder, &["--evals", "3000"]);
     assert_eq!(ran.status, Some(0), "{ran:?}");
+    let look = folder.run(&["look", "problem"]);
+    assert!(look.status == Some(0) && look.out.contains("ended: its evaluations were spent"), "{look:?}");
 }
