@@ -7,7 +7,7 @@ use clap::{Parser, Subcommand};
 use thalweg::{Blame, Failure};
 
 use super::screen::{say, warn};
-use super::{check, hunt, minima, resume};
+use super::{check, hunt, look, minima, resume};
 
 /// Hunts the lowest point of a rugged landscape, and keeps every distinct minimum that it meets.
 #[derive(Parser)]
@@ -30,6 +30,8 @@ enum Command {
     Hunt(hunt::Hunt),
     /// Goes on with a hunt that was interrupted, or with a larger budget
     Resume(resume::Resume),
+    /// Shows where a hunt stands, from another terminal
+    Look(look::Look),
     /// Shows the distinct minima of a run
     Minima(minima::Minima),
 }
@@ -67,6 +69,7 @@ fn run() -> ExitCode {
         Command::Check(check) => check.run(),
         Command::Hunt(hunt) => hunt.run(),
         Command::Resume(resume) => resume.run(),
+        Command::Look(look) => look.run(),
         Command::Minima(minima) => minima.run(),
     };
     match end.and_then(|end| say(&end.text).map(|()| end.status)) {

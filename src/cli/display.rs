@@ -150,7 +150,7 @@ impl Display {
     }
 }
 
-fn clock(time: Duration) -> String {
+pub(crate) fn clock(time: Duration) -> String {
     let seconds = time.as_secs();
     match seconds / 3600 {
         0 => format!("{:02}:{:02}", seconds / 60, seconds % 60),
@@ -159,7 +159,7 @@ fn clock(time: Duration) -> String {
 }
 
 /// Three digits and a unit: `4.18 million`.
-fn rounded(number: f64) -> String {
+pub(crate) fn rounded(number: f64) -> String {
     let (scaled, unit) = match number {
         n if n >= 1e9 => (n / 1e9, " billion"),
         n if n >= 1e6 => (n / 1e6, " million"),

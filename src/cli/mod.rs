@@ -5,6 +5,7 @@ mod check;
 mod command;
 mod display;
 mod hunt;
+mod look;
 mod minima;
 mod resume;
 mod screen;

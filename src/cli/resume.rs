@@ -4,7 +4,7 @@ use std::path::PathBuf;
 use std::time::Duration;
 
 use clap::Args;
-use thalweg::report::{JournalEntry, RunFile, read_run_file};
+use thalweg::report::{JournalEntry, RunFile, Status, read_run_file};
 use thalweg::run::{JournalReader, RunFolder, Sound};
 use thalweg::search::{Heuristic, Mix, Past, PastRound, RoundRecord, Settings};
 use thalweg::{Blame, Failure, Problem, read_bytes};
@@ -58,7 +58,7 @@ impl Resume {
             Cause::Settings(cause) => refused(cause),
             Cause::Failure(failure) => failure,
         })?;
-        let used = used_time(&run_file);
+        let used = used_time(&run_file, &folder);
         let mut allowed = run_file.settings.seconds.map(|seconds| Duration::from_secs(seconds).saturating_sub(used));
         if self.budget.is_empty() {
             if let Some(text) = ended(&run_file, &folder) {
@@ -167,26 +167,40 @@ fn given_points(folder: &RunFolder, problem: &Problem, expected: Option<&str>) -
 }
 
 /// The time that earlier sessions took, as far as they told.
-fn used_time(run_file: &RunFile) -> Duration {
-    let seconds = run_file.end.as_ref().map_or(0.0, |end| end.seconds);
+fn used_time(run_file: &RunFile, folder: &RunFolder) -> Duration {
+    // A session that was killed told only the status, up to a second before.
+    let killed = || {
+        let text = std::fs::read_to_string(folder.path().join("status.json")).ok()?;
+        serde_json::from_str::<Status>(&text).ok().map(|status| status.seconds)
+    };
+    let seconds = run_file.end.as_ref().map(|end| end.seconds).or_else(killed).unwrap_or(0.0);
     Duration::try_from_secs_f64(seconds).unwrap_or_default()
 }
 
 /// What is said of a hunt that ended as it was asked to; `None` for one that may go on.
 fn ended(run_file: &RunFile, folder: &RunFolder) -> Option<String> {
-    let why = match run_file.end.as_ref()?.reason.as_str() {
-        "evaluations" => "its evaluations were spent",
-        "time" => "its time was over",
-        "target" => "its target was met",
-        "coverage" => "its coverage was reached",
-        "quiet" => "it met no lower value for long",
-        _ => return None,
-    };
+    let reason = run_file.end.as_ref()?.reason.as_str();
+    if reason == "interrupted" {
+        return None;
+    }
+    let why = why_ended(reason);
     Some(format!(
         "This hunt has ended: {why}. Nothing was changed.\n\
          To go on, give a larger budget, such as --evals or --for; to see its minima: thalweg minima {}\n",
         folder.path().display()
     ))
+}
+
+/// The words for a reason of `run.json`.
+pub(crate) fn why_ended(reason: &str) -> &'static str {
+    match reason {
+        "evaluations" => "its evaluations were spent",
+        "time" => "its time was over",
+        "target" => "its target was met",
+        "coverage" => "its coverage was reached",
+        "quiet" => "it met no lower value for long",
+        _ => "it was interrupted",
+    }
 }
 
 fn tell_what_was_lost(sound: Sound) {

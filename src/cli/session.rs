@@ -7,9 +7,10 @@ use std::sync::atomic::{AtomicU32, Ordering};
 use std::time::{Duration, Instant};
 
 use sha2::{Digest, Sha256};
+use thalweg::ledger::Ledger;
 use thalweg::report::{
-    HuntFacts, JournalEntry, LedgerView, MinimaFile, RunEnd, RunFile, RunMachine, minima_csv, minima_text,
-    write_minima_file,
+    HuntFacts, JournalEntry, LedgerView, MinimaFile, RunEnd, RunFile, RunMachine, Status, StatusLowest, minima_csv,
+    minima_text, status_format, write_minima_file,
 };
 use thalweg::run::{Journal, Lock, RunFolder};
 use thalweg::search::{Ending, Heuristic, Observer, Outcome, Past, RoundReport, Settings, Verdict};
@@ -24,6 +25,8 @@ const WRITTEN: Duration = Duration::from_secs(30);
 /// How often the journal is put onto the disk: a power cut takes no more than this. (A process that is killed loses nothing
 /// that was written.)
 const SYNCED: Duration = Duration::from_secs(5);
+/// How often `status.json` is replaced.
+const TOLD: Duration = Duration::from_secs(1);
 /// How long after a failed write the next is tried.
 const TRIED: Duration = Duration::from_secs(1);
 /// Minima that the summary lists.
@@ -62,6 +65,8 @@ impl Session<'_> {
             began: now,
             written: now,
             synced: now,
+            told: None,
+            before: 0,
             fault: None,
             session: self,
         };
@@ -82,6 +87,9 @@ struct Watch<'a> {
     began: Instant,
     written: Instant,
     synced: Instant,
+    told: Option<Instant>,
+    /// Evaluations of earlier sessions.
+    before: u64,
     /// The last write that failed, and when; nothing is lost while the process lives.
     fault: Option<(Failure, Instant)>,
 }
@@ -94,6 +102,10 @@ impl Observer for Watch<'_> {
             }
             self.fault = Some((failure, Instant::now()));
         }
+        if self.told.is_none_or(|told| told.elapsed() >= TOLD) {
+            self.tell(report.evaluations, by_name(&report.by_heuristic), report.ledger, report.troubles.outside, None);
+            self.told = Some(Instant::now());
+        }
         self.display.show(report);
         self.idle()
     }
@@ -105,6 +117,7 @@ impl Observer for Watch<'_> {
 
     fn replayed(&mut self, report: &RoundReport<'_>) -> Verdict {
         self.began = Instant::now();
+        self.before = report.evaluations;
         self.display.replayed(report);
         if self.is_interrupted() { Verdict::Stop } else { Verdict::Continue }
     }
@@ -154,6 +167,44 @@ impl Watch<'_> {
         Ok(())
     }
 
+    /// Replaces `status.json`. Where that fails nothing is lost, and the journal's failure tells it.
+    fn tell(
+        &self,
+        evaluations: u64,
+        by_heuristic: BTreeMap<String, u64>,
+        ledger: &Ledger,
+        outside: u64,
+        reason: Option<&str>,
+    ) {
+        let elapsed = self.began.elapsed();
+        let lowest = ledger.lowest_entry().and_then(|entry| ledger.entry(entry)).map(|entry| StatusLowest {
+            value: self.sign * entry.value(),
+            heuristic: Heuristic::ALL.get(entry.first().heuristic).map_or("", |who| who.name()).to_string(),
+            evaluation: entry.first().evaluation,
+        });
+        let status = Status {
+            format: status_format(),
+            state: if reason.is_some() { "ended" } else { "hunting" }.to_string(),
+            reason: reason.map(String::from),
+            seconds: (self.session.used + elapsed).as_secs_f64(),
+            allowed_seconds: self.session.run_file.settings.seconds,
+            evaluations,
+            allowed_evaluations: self.session.settings.max_evaluations,
+            evaluations_a_second: evaluations.saturating_sub(self.before) as f64 / elapsed.as_secs_f64().max(1e-3),
+            lowest,
+            maximise: self.sign < 0.0,
+            distinct: ledger.len() as u64,
+            confirmed: ledger.n_confirmed() as u64,
+            by_heuristic,
+            outside,
+            fault: self.fault.as_ref().map(|(failure, _)| failure.to_string()),
+        };
+        if let Ok(mut text) = serde_json::to_string_pretty(&status) {
+            text.push('\n');
+            let _ = self.session.folder.write_unsynced("status.json", text.as_bytes());
+        }
+    }
+
     fn write_minima(&self, file: &MinimaFile) -> Result<(), Failure> {
         let refused = |error: String| Failure::new(Blame::Program, error);
         let json = write_minima_file(file).map_err(|error| refused(error.to_string()))?;
@@ -193,6 +244,8 @@ impl Watch<'_> {
             write_json(self.session.folder, "run.json", &self.session.run_file),
         ];
         let failure = attempts.into_iter().find_map(Result::err);
+        let by_heuristic = by_name(&outcome.by_heuristic);
+        self.tell(outcome.evaluations, by_heuristic, &outcome.ledger, outcome.troubles.outside, Some(reason));
         let mut text = if self.session.json {
             write_minima_file(&file).map_err(|error| Failure::new(Blame::Program, error.to_string()))?
         } else {

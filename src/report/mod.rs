@@ -13,6 +13,7 @@ mod minima_file;
 mod minima_text;
 mod nested;
 mod run_file;
+mod status;
 mod table;
 
 pub use check::{BrokenFacts, CheckFacts, FamilyFacts, GradientFacts, check_json, check_text};
@@ -28,4 +29,5 @@ pub use minima_file::{
 pub use minima_text::minima_text;
 pub use nested::{Nested, nest};
 pub use run_file::{JournalEntry, RunEnd, RunFile, RunFileError, RunMachine, RunSettings, read_run_file, run_format};
+pub use status::{Status, StatusLowest, status_format};
 pub use table::{Align, Table, plain};

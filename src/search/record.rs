@@ -4,7 +4,7 @@
 //! on nothing but the state before. So a record has only what the work itself found. An arrival at known entries is their
 //! numbers and no coordinates, since nearly all arrivals of a long hunt are such.
 //!
-//! The text of a round is its tasks, separated by `;`. A task is the number of its heuristic (or `c` for a confirmation), its
+//! The text of a round is its check and its tasks, separated by `;`. A task is the number of its heuristic (or `c` for a confirmation), its
 //! evaluations, and what was found:
 //!
 //! | text | found |
@@ -31,6 +31,8 @@ use super::task::Lost;
 /// What the tasks of a round came to, in task order.
 #[derive(Clone, Debug, Default, PartialEq)]
 pub struct RoundRecord {
+    /// The next random number of the stream that the round was drawn from: another hunt, or another way to draw, has another.
+    pub check: u32,
     /// One for each task.
     pub tasks: Vec<TaskRecord>,
 }
@@ -91,7 +93,7 @@ pub enum Found {
 /// A text that is not the record of a round.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct BadRecord {
-    /// The task, from 1, whose text is not understood.
+    /// The task, from 1, whose text is not understood; 0 where the check is not.
     pub task: usize,
 }
 
@@ -108,16 +110,15 @@ impl RoundRecord {
     ///
     /// ```
     /// use thalweg::search::RoundRecord;
-    /// let text = "1 104<+-1.5e0@1e0,-0e0;5 31=0 f2/1;2 7-o o7@inf,2e0;c 42x";
+    /// let text = "00c0ffee;1 104<+-1.5e0@1e0,-0e0;5 31=0 f2/1;2 7-o o7@inf,2e0;c 42x";
     /// assert_eq!(RoundRecord::read(text).unwrap().text(), text);
-    /// assert_eq!(RoundRecord::read("1 104=0;7 1=0").unwrap_err().task, 2);
+    /// assert_eq!(RoundRecord::read("00c0ffee;1 104=0;7 1=0").unwrap_err().task, 2);
     /// ```
     pub fn text(&self) -> String {
-        let mut out = String::with_capacity(12 * self.tasks.len());
-        for (number, task) in self.tasks.iter().enumerate() {
-            if number > 0 {
-                out.push(';');
-            }
+        let mut out = String::with_capacity(12 * self.tasks.len() + 8);
+        let _ = write!(out, "{:08x}", self.check);
+        for task in &self.tasks {
+            out.push(';');
             // Writing to a string cannot fail.
             let _ = task.write(&mut out);
         }
@@ -129,11 +130,10 @@ impl RoundRecord {
     /// # Errors
     /// [`BadRecord`] for the first task that is not understood.
     pub fn read(text: &str) -> Result<RoundRecord, BadRecord> {
-        if text.is_empty() {
-            return Ok(RoundRecord::default());
-        }
+        let mut parts = text.split(';');
+        let check = parts.next().and_then(|check| u32::from_str_radix(check, 16).ok()).ok_or(BadRecord { task: 0 })?;
         let read = |(number, text)| TaskRecord::read(text).ok_or(BadRecord { task: number + 1 });
-        Ok(RoundRecord { tasks: text.split(';').enumerate().map(read).collect::<Result<_, _>>()? })
+        Ok(RoundRecord { check, tasks: parts.enumerate().map(read).collect::<Result<_, _>>()? })
     }
 }
 
@@ -333,7 +333,7 @@ mod tests {
         #[test]
         fn records_read_back_to_the_same_bits(
             found in proptest::collection::vec(found(), 0..4),
-            evaluations: u64, outside in 0..3_u64, first in proptest::option::of(numbers()), fillings: (u32, u32),
+            evaluations: u64, check: u32, outside in 0..3_u64, first in proptest::option::of(numbers()), fillings: (u32, u32),
             member in 0..Heuristic::ALL.len(),
         ) {
             let tasks = found.into_iter().map(|found| TaskRecord {
@@ -345,7 +345,7 @@ mod tests {
                     .then_some(Heuristic::ALL[member]),
                 found,
             });
-            let record = RoundRecord { tasks: tasks.collect() };
+            let record = RoundRecord { check, tasks: tasks.collect() };
             let text = record.text();
             let again = RoundRecord::read(&text).unwrap();
             prop_assert_eq!(&again, &record);
@@ -357,7 +357,8 @@ mod tests {
     /// Whatever a text is, reading it never fails otherwise than by saying so.
     #[test]
     fn every_piece_of_a_text_is_read_or_refused() {
-        let text = "1 104<^+-1.5e0@1e0,-0e0 o7@inf,2e0 f2/1;c 42!i0~-1.5e0@1e0~0e0~1e-15~3;c 42x;2 7-o;5 31=0,4";
+        let text =
+            "00000007;1 104<^+-1.5e0@1e0,-0e0 o7@inf,2e0 f2/1;c 42!i0~-1.5e0@1e0~0e0~1e-15~3;c 42x;2 7-o;5 31=0,4";
         assert_eq!(RoundRecord::read(text).unwrap().text(), text);
         for end in 1..text.len() {
             let _ = RoundRecord::read(&text[..end]);

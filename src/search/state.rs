@@ -7,6 +7,8 @@
 use std::collections::{BTreeMap, BTreeSet};
 use std::sync::Arc;
 
+use rand::RngExt;
+
 use crate::base::random::{Purpose, stream};
 use crate::ledger::{Candidate, EntryId, Identity, Ledger, Meeting};
 use crate::numbers::functions;
@@ -54,6 +56,13 @@ enum Purport {
     Confirm(EntryId),
 }
 
+/// A round under way.
+#[derive(Default)]
+struct Drawn {
+    check: u32,
+    purports: Vec<Purport>,
+}
+
 /// A hunt between two rounds.
 pub struct Hunt {
     settings: Settings,
@@ -66,7 +75,7 @@ pub struct Hunt {
     confirming: u64,
     asked_to_confirm: BTreeSet<EntryId>,
     /// What the tasks of the rounds under way are for.
-    under_way: BTreeMap<u64, Vec<Purport>>,
+    under_way: BTreeMap<u64, Drawn>,
     given_drawn: usize,
     rounds_merged: u64,
     /// The evaluations after which the lowest value so far was met.
@@ -115,15 +124,16 @@ impl Hunt {
             let scene = Scene { structure: &self.structure, ledger: &self.ledger, met: &self.met, round };
             work.push(self.portfolio.propose(&scene, &mut turns, &mut rng));
         }
-        self.tasks(round, work)
+        let check = rng.random::<u32>();
+        self.tasks(round, check, work)
     }
 
-    fn tasks(&mut self, round: u64, work: Vec<Work>) -> Vec<Task> {
+    fn tasks(&mut self, round: u64, check: u32, work: Vec<Work>) -> Vec<Task> {
         let purport = |work: &Work| match *work {
             Work::Descend { heuristic, mark, .. } => Purport::Descend(heuristic, mark),
             Work::Confirm { entry, .. } => Purport::Confirm(entry),
         };
-        self.under_way.insert(round, work.iter().map(purport).collect());
+        self.under_way.insert(round, Drawn { check, purports: work.iter().map(purport).collect() });
         work.into_iter().enumerate().map(|(number, work)| Task { round, number: number as u64, work }).collect()
     }
 
@@ -140,8 +150,8 @@ impl Hunt {
     }
 
     fn absorb(&mut self, round: u64, results: Vec<TaskResult>) -> RoundRecord {
-        let purports = self.under_way.remove(&round).unwrap_or_default();
-        let mut record = RoundRecord { tasks: Vec::with_capacity(results.len()) };
+        let Drawn { check, purports } = self.under_way.remove(&round).unwrap_or_default();
+        let mut record = RoundRecord { check, tasks: Vec::with_capacity(results.len()) };
         for (number, (result, purport)) in results.into_iter().zip(purports).enumerate() {
             let task = self.decide(result);
             self.apply(round, number as u64, purport, &task);
@@ -152,13 +162,14 @@ impl Hunt {
 
     /// Takes in a round as it was recorded, in place of its results; `false` where the record is that of another hunt.
     pub fn replay(&mut self, round: u64, record: &RoundRecord) -> bool {
-        let purports = self.under_way.remove(&round).unwrap_or_default();
+        let Drawn { check, purports } = self.under_way.remove(&round).unwrap_or_default();
         self.rounds_merged += 1;
         let fits = |(purport, task): (&Purport, &TaskRecord)| match *purport {
             Purport::Descend(heuristic, _) => task.heuristic == Some(heuristic),
             Purport::Confirm(_) => task.heuristic.is_none(),
         };
-        purports.len() == record.tasks.len()
+        check == record.check
+            && purports.len() == record.tasks.len()
             && purports.iter().zip(&record.tasks).all(fits)
             && purports
                 .into_iter()
@@ -329,7 +340,7 @@ impl Hunt {
         let waiting: Vec<EntryId> = self.ledger.unconfirmed(most);
         let points = waiting.into_iter().filter_map(|entry| Some((entry, self.ledger.point(entry)?)));
         let work = points.map(|(entry, at)| Work::Confirm { entry, at }).collect();
-        self.tasks(round, work)
+        self.tasks(round, 0, work)
     }
 
     /// Evaluations so far, confirmations included.

@@ -40,3 +40,6 @@ mod commands;
 
 /// Whole hunts by the real program.
 mod hunts;
+
+/// Hunts that are killed, starved of disk, edited and gone on with.
+mod nights;
