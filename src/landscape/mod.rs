@@ -7,6 +7,7 @@
 mod build;
 mod calls;
 mod check;
+mod condition;
 mod declare;
 mod domain;
 mod elaborate;

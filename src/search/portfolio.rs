@@ -137,11 +137,11 @@ impl Portfolio {
 
     /// The ways inside heuristics with their shares.
     pub fn ways(&self) -> Vec<(Heuristic, &'static str, f64)> {
-        let named = |(member, (heuristic, _)): (&Box<dyn Proposer>, &(Heuristic, f64))| {
-            let heuristic = *heuristic;
-            member.ways().into_iter().map(move |(name, share)| (heuristic, name, share)).collect::<Vec<_>>()
-        };
-        self.members.iter().zip(self.mix.members()).flat_map(named).collect()
+        let mut ways = Vec::new();
+        for (member, &(heuristic, _)) in self.members.iter().zip(self.mix.members()) {
+            ways.extend(member.ways().into_iter().map(|(name, share)| (heuristic, name, share)));
+        }
+        ways
     }
 
     fn member(&self, heuristic: Heuristic) -> Option<usize> {

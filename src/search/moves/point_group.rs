@@ -168,9 +168,7 @@ mod tests {
             let order = group.elements.len();
             assert!(order > 1 && order <= 120);
             for element in &group.elements {
-                for row in 0..3 {
-                    assert!((inner(&element[row], &element[row]) - 1.0).abs() < 1e-12);
-                }
+                assert!(element.iter().all(|row| (inner(row, row) - 1.0).abs() < 1e-12));
             }
             let point = group.special(&[0.3, 1.2, if round % 2 == 0 { 0.0 } else { -0.7 }], &mut rng);
             assert_eq!(order % group.orbit(&point).len(), 0, "{order}");
