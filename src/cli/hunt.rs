@@ -110,6 +110,7 @@ impl Hunt {
             folder: &folder,
             _lock: lock,
             run_file,
+            run_file_written: true,
             settings,
             threads,
             allowed,
