@@ -110,6 +110,7 @@ impl Hunt {
             folder: &folder,
             _lock: lock,
             run_file,
+            run_file_written: true,
             settings,
             threads,
             allowed,
@@ -152,9 +153,9 @@ impl Hunt {
         settings: &Settings,
         allowed: Option<Duration>,
         given: Option<&str>,
-        sign: f64,
         threads: usize,
     ) -> RunFile {
+        let sign = if described.sense == "maximise" { -1.0 } else { 1.0 };
         let order = settings.mix.members().iter().map(|member| member.0.name().to_string()).collect();
         let mix = settings.mix.members().iter().map(|(heuristic, share)| (heuristic.name().to_string(), *share));
         RunFile {

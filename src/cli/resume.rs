@@ -13,7 +13,7 @@ use super::budget::Budget;
 use super::command::End;
 use super::hunt::{LARGEST_POINTS, processors};
 use super::screen::warn;
-use super::session::{Session, catch_interrupts, digest, machine, write_json};
+use super::session::{Session, catch_interrupts, digest, machine};
 use super::source::{LARGEST_PROBLEM, read_file, run_folder};
 
 /// The largest `run.json`: it holds the text of the problem.
@@ -89,13 +89,13 @@ impl Resume {
         run_file.program = env!("CARGO_PKG_VERSION").to_string();
         run_file.machine = machine(threads);
         let mut past = Recorded { reader: folder.read_journal()?, rounds: sound.lines };
-        write_json(&folder, "run.json", &run_file)?;
         let session = Session {
             problem: &problem,
             folder: &folder,
             _lock: lock,
             journal,
             run_file,
+            run_file_written: false,
             settings,
             threads,
             allowed,

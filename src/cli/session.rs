@@ -40,7 +40,9 @@ pub(crate) struct Session<'a> {
     pub(crate) folder: &'a RunFolder,
     pub(crate) _lock: Lock,
     pub(crate) journal: Journal,
+    /// What `run.json` is to say; it was written already, or is with the first round.
     pub(crate) run_file: RunFile,
+    pub(crate) run_file_written: bool,
     pub(crate) settings: Settings,
     pub(crate) threads: usize,
     /// The time allowed from now on.
@@ -144,6 +146,11 @@ impl Watch<'_> {
         self.session.journal.keep(&line);
         if self.fault.as_ref().is_some_and(|(_, tried)| tried.elapsed() < TRIED) {
             return Ok(());
+        }
+        if !self.session.run_file_written {
+            // Not before the recorded rounds proved to be those of this hunt.
+            write_json(self.session.folder, "run.json", &self.session.run_file)?;
+            self.session.run_file_written = true;
         }
         self.session.journal.flush()?;
         if self.fault.is_some() || self.synced.elapsed() >= SYNCED {

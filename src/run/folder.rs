@@ -79,6 +79,8 @@ impl RunFolder {
         match file.try_lock() {
             Ok(()) => Ok(Lock(file)),
             Err(TryLockError::WouldBlock) => Err(RunError::Locked(self.path.clone())),
+            // A file system without locks is no reason not to hunt.
+            Err(TryLockError::Error(error)) if error.kind() == ErrorKind::Unsupported => Ok(Lock(file)),
             Err(TryLockError::Error(error)) => Err(refused(error)),
         }
     }

@@ -4,15 +4,15 @@
 //! on nothing but the state before. So a record has only what the work itself found. An arrival at known entries is their
 //! numbers and no coordinates, since nearly all arrivals of a long hunt are such.
 //!
-//! The text of a round is its check and its tasks, separated by `;`. A task is the number of its heuristic (or `c` for a confirmation), its
-//! evaluations, and what was found:
+//! The text of a round is its check and its tasks, separated by `;`. A task is the number of its heuristic (or `c` for a
+//! confirmation), its evaluations, and what was found:
 //!
 //! | text | found |
 //! | --- | --- |
 //! | `5 104=17` | the entry 17; `=17,29` the entries 17 and 29, which are one then |
 //! | `5 104+-1.5e0@1e0,2e0` | a new entry: value, place |
 //! | `5 104-o` | nothing: start outside (`o`), out of evaluations (`b`), stalled (`s`), abandoned (`a`) |
-//! | `c 42!i0~-1.5e0@1e0,2e0~0e0,3e0~1e-15~` | confirmed: kind (`i`, `b`, `f`, `k`), saddles, value and place, stiffness, residual, active slots |
+//! | `c 42!i0~-1.5e0@1e0,2e0~0e0,3e0~1e-15~` | confirmed: kind (of `ibfk`), saddles, value, place, stiffness, residual, active slots |
 //! | `c 42x` | dismissed |
 //!
 //! An arrival that is lower than all before has `<` in front of its mark, one at a kink `^`. Evaluations outside the landscape

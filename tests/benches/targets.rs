@@ -4,6 +4,8 @@
 //! a part of it; `-- --counts` the table of minima found, estimated and counted. What a seed cannot reach within the most evaluations counts with all that it spent (total spent over
 //! hits), as `shared` budgets do in any comparison of this kind.
 
+#![allow(clippy::print_stdout, reason = "a benchmark reports on standard output")]
+
 use std::time::Instant;
 
 use rayon::prelude::*;

@@ -1,6 +1,7 @@
 //! Landscapes with a published lowest value, written in the landscape language: clouds of atoms, polymers, and the
 //! general set. Sources beside each.
 
+use std::f64::consts::FRAC_PI_2;
 use std::fmt::Write as _;
 
 use rand::RngExt;
@@ -145,11 +146,11 @@ pub fn general() -> Vec<Function> {
         1.28499157,
         1.923058468,
         1.720469772,
-        1.570796327,
+        FRAC_PI_2,
         1.454413971,
         1.756086521,
         1.655717417,
-        1.570796327,
+        FRAC_PI_2,
     ];
     let function = |name, n, bounds, objective, lowest, place, goal| Function {
         name,
