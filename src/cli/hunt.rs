@@ -97,7 +97,7 @@ impl Hunt {
         let lock = folder.lock()?;
         let described = problem.described(&self.givens, &bytes);
         let given = (!settings.given.is_empty()).then(|| points_table(&problem, &settings.given));
-        let run_file = self.run_file(&described, &bytes, &settings, allowed, given.as_deref(), sign, threads);
+        let run_file = self.run_file(&described, &bytes, &settings, allowed, given.as_deref(), threads);
         folder.write("problem.land", &bytes)?;
         if let Some(table) = &given {
             folder.write("given.csv", table.as_bytes())?;
