@@ -97,7 +97,7 @@ impl Mix {
     /// ```
     /// use thalweg::search::{Heuristic, Mix};
     /// let mix = Mix::read("hop:3,multistart").unwrap();
-    /// assert_eq!(mix.members(), [(Heuristic::Hop, 0.88), (Heuristic::Multistart, 0.25)]);
+    /// assert_eq!(mix.members(), [(Heuristic::Hop, 0.75), (Heuristic::Multistart, 0.25)]);
     /// assert!(mix.is_fixed() && !Mix::read("hop,evolve").unwrap().is_fixed());
     /// assert!(Mix::read("jump").is_err());
     /// ```
