@@ -35,7 +35,8 @@ pub(super) fn coverage_text(coverage: &Coverage, word: &str) -> String {
             chance(next.interval.low),
             chance(next.interval.high)
         ));
-        if let Some(more) = coverage.next.last().filter(|more| more.starts > 1) {
+        if let Some(more) = coverage.next.last().filter(|more| more.starts > 1 && more.expected >= next.chance) {
+            // The curve knows less than the chance where hardly anything was met twice: then it is not told.
             out.push_str(&format!(
                 "; {} further starts would add about {}",
                 grouped(more.starts),

@@ -2,8 +2,9 @@
 //!
 //! Enters: a landscape, its compiled kernel, settings. Leaves: an [`Outcome`]. Promised: the same landscape, settings
 //! and seed give the same ledger, bit for bit, on any number of threads; round r is drawn up from the state after round
-//! r - 2 and merged in task order. A hunt goes on from the records of its rounds as if it had never stopped. Deliberately absent: clocks, files and signals (an [`Observer`] says when to stop),
-//! and any move that knows a particular problem.
+//! r - 2 and merged in task order. A hunt goes on from the records of its rounds as if it had never stopped.
+//! Deliberately absent: clocks, files and signals (an [`Observer`] says when to stop), and any move that knows a
+//! particular problem.
 //!
 //! The way of a task: [`state::Hunt`] draws a round of [`task::Task`]s; a [`worker::Worker`] turns each proposal into a
 //! start, lets `descent` ask and `evaluate` answer, many tasks in lanes at once; the hunt merges the results into the

@@ -150,7 +150,7 @@ impl Filling {
             n_moved: 0,
             ended: false,
         };
-        filling.survey();
+        filling.rank_rows();
         filling.next_place();
         (!filling.ended).then_some(filling)
     }
@@ -179,7 +179,7 @@ impl Filling {
     }
 
     /// Lists the worst-bound rows.
-    fn survey(&mut self) {
+    fn rank_rows(&mut self) {
         let points = points_of(&self.cloud, &self.at);
         let centroid = centroid_of(&points);
         let contacts = |row: usize| {
@@ -216,7 +216,7 @@ impl Filling {
                     self.ended = true;
                     return;
                 }
-                self.survey();
+                self.rank_rows();
             } else if !self.trial.is_empty() {
                 self.in_vain += 1;
             }
@@ -233,5 +233,32 @@ impl Filling {
                 places.into_iter().map(|vacancy| vacancy.at).filter(|at| !touching(at)).take(PLACES).collect();
             self.places.reverse();
         }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    const TETRAHEDRON: [Point; 4] = [[1.0, 1.0, 1.0], [1.0, -1.0, -1.0], [-1.0, 1.0, -1.0], [-1.0, -1.0, 1.0]];
+
+    /// A regular tetrahedron has one empty place over each face, and none inside.
+    #[test]
+    fn places_over_the_faces_of_a_tetrahedron() {
+        let contact = 8.0_f64.sqrt();
+        let found = vacancies(&TETRAHEDRON, 3, contact);
+        assert_eq!(found.len(), 4, "{found:?}");
+        for vacancy in found {
+            assert_eq!(vacancy.contacts, 3);
+            assert!((inner(&vacancy.at, &vacancy.at).sqrt() - 25.0 / 75.0_f64.sqrt()).abs() < 1e-9, "{vacancy:?}");
+        }
+    }
+
+    /// The two sides of a pair in the plane.
+    #[test]
+    fn places_beside_a_pair_in_the_plane() {
+        let found = vacancies(&[[0.0, 0.0, 0.0], [1.0, 0.0, 0.0]], 2, 1.0);
+        assert_eq!(found.len(), 2);
+        assert!(found.iter().all(|vacancy| (vacancy.at[1].abs() - 0.75_f64.sqrt()).abs() < 1e-12));
     }
 }
